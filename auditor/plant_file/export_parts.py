@@ -1,0 +1,192 @@
+"""Parts of the plant file about exports: one table for each kind of file, one for each tag in it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from types import MappingProxyType
+from typing import Annotated, Any, ClassVar, Literal
+
+from auditor.plant_file.leaves import (
+    Clock,
+    Duration,
+    Encoding,
+    FilePatterns,
+    OneLine,
+    OwnUnitValue,
+    Spread,
+    StampColumns,
+    UnitText,
+)
+from auditor.plant_file.parts import Choice, Part, keys_of, optional, required
+
+_BETWEEN = "what the value means between two stamps: step, line, mean, amount, counter or state"
+_HOLD = "longest time between two samples that is still covered"
+_FULL_STRETCH = "longest stretch that one stamp can stand for"
+_UNCERTAINTY = 'a bare number is in the tag\'s own unit, "2 %" is of the reading, "2 % of 1200 kW" of a span'
+
+
+class NumberTag(Part):
+    """What every tag has whose cells hold numbers."""
+
+    either: ClassVar[tuple[tuple[str, str], ...]] = (("standard", "limit"),)
+
+    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    unit: UnitText = required("unit of the logged number", "kW")
+    standard: Spread | None = optional(f"one standard uncertainty; {_UNCERTAINTY}", "0.5 %")
+    limit: Spread | None = optional(
+        f"class limit of the instrument (rectangular); {_UNCERTAINTY}", "2 % of 1200 kW"
+    )
+    random: Spread | None = optional(
+        "standard uncertainty of the random part of one sample; estimated from the log without it", 0.5
+    )
+    resolution: OwnUnitValue | None = optional("smallest step of the logged number", "0.1 kWh")
+    believable: list[float] | None = optional(
+        "least and largest believable value, in the tag's own unit", [0, 700], alias="range"
+    )
+
+
+class InstantTag(NumberTag):
+    """A tag whose number is a level or a rate, not an amount."""
+
+    frozen_after: Duration | None = optional(
+        "time without any change after which the tag counts as frozen while the plant runs", "2 h"
+    )
+    cut_off: OwnUnitValue | None = optional("size below which a flow or power counts as zero", "0.5 m3/h")
+    pressure: Literal["gauge", "absolute"] | None = optional(
+        "whether a pressure is read against the air or against vacuum; required for every pressure", "gauge"
+    )
+    basis: Literal["dry", "wet"] | None = optional(
+        "whether a gas is analysed dry or wet; required where oxygen gives a flue-gas flow", "dry"
+    )
+
+
+class StepTag(InstantTag):
+    """The value holds until the next one is stored."""
+
+    between: Literal["step"] = required(_BETWEEN, "step")
+    hold: Duration = required(_HOLD, "60 min")
+    deadband: OwnUnitValue | None = optional("change that it takes before a new value is stored", "5 K")
+
+
+class LineTag(InstantTag):
+    """Between two stamps the value runs along a straight line."""
+
+    between: Literal["line"] = required(_BETWEEN, "line")
+    hold: Duration = required(_HOLD, "5 min")
+    deadband: OwnUnitValue | None = optional("change that it takes before a new value is stored", "0.5 K")
+
+
+class MeanTag(InstantTag):
+    """The value is the mean over the stretch that its stamp marks."""
+
+    between: Literal["mean"] = required(_BETWEEN, "mean")
+    stamp_marks: Literal["start", "end"] = required("which end of its stretch the stamp marks", "end")
+    hold: Duration = optional(_FULL_STRETCH, "15 min", default="1 h")
+
+
+class AmountTag(NumberTag):
+    """The value is the amount in the stretch that its stamp marks."""
+
+    between: Literal["amount"] = required(_BETWEEN, "amount")
+    stamp_marks: Literal["start", "end"] = required("which end of its stretch the stamp marks", "end")
+    hold: Duration = optional(_FULL_STRETCH, "15 min", default="1 h")
+
+
+class CounterTag(NumberTag):
+    """The value is the reading of an index that counts up."""
+
+    between: Literal["counter"] = required(_BETWEEN, "counter")
+    at_most: OwnUnitValue = required("largest believable rate of the counter", "1300 kW")
+    hold: Duration = optional(
+        "longest time between two readings over which their difference is spread", "15 min", default="15 min"
+    )
+    full_scale: OwnUnitValue | None = optional(
+        "reading at which the counter begins again at zero", "9999999 kWh"
+    )
+
+
+class StateTag(Part):
+    """The cell holds a state: a breaker, a mode."""
+
+    column: OneLine = required("heading of the column; in a long export its name in the tag column", "BKR")
+    between: Literal["state"] = required(_BETWEEN, "state")
+    hold: Duration = required(_HOLD, "5 min")
+    states: dict[str, OneLine] = required(
+        "every raw text of the export with the name of its state", {"0": "open", "1": "closed"}
+    )
+
+
+AnyTag = StepTag | LineTag | MeanTag | AmountTag | CounterTag | StateTag
+_TAG_FORMS: Mapping[str, type[Part]] = MappingProxyType(
+    {
+        "step": StepTag,
+        "line": LineTag,
+        "mean": MeanTag,
+        "amount": AmountTag,
+        "counter": CounterTag,
+        "state": StateTag,
+    }
+)
+
+
+class UndecidedTag(Part):
+    """A tag that does not say what its value means between two stamps: nothing more can be checked."""
+
+    also_known: ClassVar[frozenset[str]] = frozenset(
+        key for form in _TAG_FORMS.values() for key in keys_of(form)
+    )
+
+    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    between: Literal["step", "line", "mean", "amount", "counter", "state"] = required(_BETWEEN, "line")
+
+
+def tag_form(raw: Mapping[str, Any]) -> type[Part]:
+    """Form of a tag, from what its value means between two stamps."""
+    return _TAG_FORMS.get(str(raw.get("between")), UndecidedTag)
+
+
+class LongLayoutPart(Part):
+    """Headings of a long export: one row per stamp, tag and value."""
+
+    stamp: OneLine = required("heading of the stamp", "time")
+    tag: OneLine = required("heading of the column that names the tag", "point")
+    value: OneLine = required("heading of the value", "reading")
+
+
+class ExportPart(Part):
+    """One kind of export file."""
+
+    files: FilePatterns = required(
+        "patterns below logs/; where two of them hold the same stamp, the earlier one wins", ["power/*.csv"]
+    )
+    clock: Clock = required("whose clock the stamps are of: a zone, UTC or a fixed offset", "+01:00")
+    date_order: Literal["year first", "day first", "month first", "epoch seconds", "epoch milliseconds"] = (
+        required("how stamps are written", "day first")
+    )
+    decimal: Literal[".", ","] = required("decimal mark of the numbers", ",")
+    repeated_hour: Literal["by order", "drop"] | None = optional(
+        "how the hour is resolved that an autumn clock change repeats; by order without it", "by order"
+    )
+    delimiter: Literal[",", ";", "tab"] | None = optional(
+        "column separator; found from the files without it", ";"
+    )
+    encoding: Encoding | None = optional("text encoding; found from the files without it", "cp1252")
+    layout: LongLayoutPart | None = optional(
+        "only for a long export, one row per stamp, tag and value",
+        {"stamp": "time", "tag": "point", "value": "reading"},
+    )
+    stamp: StampColumns | None = optional(
+        "heading of the stamp, or two where date and time stand apart; the first column without it",
+        ["Date", "Time"],
+    )
+    sentinels: list[float] | None = optional("numbers that stand for a missing value", [-9999])
+    status_words: dict[str, float] | None = optional(
+        "words that stand for a number; every other word is missing, kept and counted", {"off": 0}
+    )
+    when_stamps_repeat: Literal["keep first", "keep later", "reject both"] = optional(
+        "which of several different values of one stamp is kept", "keep later", default="reject both"
+    )
+    tags: dict[str, Annotated[AnyTag, Choice(tag_form)]] = required(
+        "the tags read from this export, by the names used in this file",
+        {"power": {"column": "OR-G", "unit": "kW", "between": "line", "hold": "5 min", "standard": "0.5 %"}},
+    )
