@@ -1,0 +1,127 @@
+"""What becomes of each number of one tag: used, out of range, distrusted, repeated, outside the period."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from auditor.cleaning.repeats import one_event_per_stamp, resolve
+from auditor.cleaning.rows import NO_ROWS
+from auditor.records.samples import Disposition
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from auditor.cleaning.repeats import Resolved
+    from auditor.cleaning.view import View
+    from auditor.records.plant import Tag
+
+NO_NUMBER = -1
+
+
+@dataclass(frozen=True)
+class Judged:
+    """The rows of one tag by what became of its number there."""
+
+    codes: NDArray[np.int8] | None
+    """A :class:`Disposition` per row, -1 where there is no number; None: every row is used."""
+    good: NDArray[np.bool_] | None
+    """Rows with a believed number, at most one per stamp, also outside the period; None: all."""
+    event: NDArray[np.bool_] | None
+    """Rows where something was logged, believed or not, at most one per stamp; None: all."""
+    resolved: Resolved | None
+    """What became of values that share a stamp; None: none do."""
+
+
+def judge(
+    view: View,
+    row_of: int,
+    tag: Tag,
+    distrust_us: tuple[tuple[int, int], ...],
+    since_us: int | None,
+) -> Judged:
+    """Judge the numbers of one tag, row ``row_of`` of the view.
+
+    An empty cell is no event: in a table of slow and fast signals it only says that this one was not due.
+    A cell that held something unusable is an event, and ends the stretch of the value before it. Order of
+    the tests: outside the period, distrusted, out of range, repeated.
+
+    Rows before ``since_us`` belong to what the period before has dealt with, and are outside.
+    """
+    numbers = view.numbers[row_of, 1:]
+    finite = view.finite[row_of]
+    inside = view.tick_counts(stamp_shift_us(tag)).inside
+    windows = _distrusted_rows(view, tag, distrust_us)
+    out = _out_of_range(numbers, finite, tag)
+    if tag.cut_off is not None and tag.between != "counter":
+        numbers[np.abs(numbers) < tag.cut_off] = 0.0
+    known_rows = 0 if since_us is None else int(np.searchsorted(view.rows.instants_us, since_us, side="left"))
+    if view.repeats is None and windows is None and out is None and not known_rows and finite.all():
+        codes = None
+        if inside is not None:
+            codes = np.where(inside, Disposition.USED, Disposition.OUTSIDE_PERIOD).astype(np.int8)
+        return Judged(codes, None, None, None)
+    codes = np.where(finite, Disposition.USED, NO_NUMBER).astype(np.int8)
+    good = finite.copy()
+    if out is not None:
+        codes[out] = Disposition.OUT_OF_RANGE
+        good &= ~out
+    if windows is not None:
+        codes[windows & finite] = Disposition.DISTRUSTED
+        good &= ~windows
+    good[:known_rows] = False
+    event = finite.copy()
+    event[view.rows.broken[row_of]] = True
+    event[:known_rows] = False
+    resolved = None
+    if view.repeats is not None:
+        resolved = resolve(view.repeats, view.rows.raw[row_of], good)
+        codes[resolved.duplicate] = Disposition.DUPLICATE
+        codes[resolved.lost] = Disposition.CONFLICT_LOST
+        good[resolved.duplicate] = False
+        good[resolved.lost] = False
+        one_event_per_stamp(view.repeats, event, good)
+    if inside is not None:
+        codes[finite & ~inside] = Disposition.OUTSIDE_PERIOD
+    return Judged(codes, good, None if event.all() else event, resolved)
+
+
+def stamp_shift_us(tag: Tag) -> int:
+    """Return what to take off a stamp to find the tick it belongs to.
+
+    A stamp at the end of its stretch belongs to the time just before it.
+    """
+    return 1 if tag.stamp_marks == "end" and tag.between in ("mean", "amount") else 0
+
+
+def _out_of_range(
+    numbers: NDArray[np.float64], finite: NDArray[np.bool_], tag: Tag
+) -> NDArray[np.bool_] | None:
+    if tag.believable is None:
+        return None
+    low, high = tag.believable
+    out = finite & ~((numbers >= low) & (numbers <= high))
+    return out if out.any() else None
+
+
+def _distrusted_rows(
+    view: View, tag: Tag, distrust_us: tuple[tuple[int, int], ...]
+) -> NDArray[np.bool_] | None:
+    instants = view.rows.instants_us
+    shift = stamp_shift_us(tag)
+    found: NDArray[np.bool_] | None = None
+    for start_us, end_us in distrust_us:
+        first, last = np.searchsorted(instants, (start_us + shift, end_us + shift), side="left")
+        if last > first:
+            found = np.zeros(instants.size, dtype=np.bool_) if found is None else found
+            found[first:last] = True
+    return found
+
+
+def rows_where(mask: NDArray[np.bool_] | None, count: int) -> NDArray[np.intp]:
+    """Return the rows of a mask, all of ``count`` when it is None."""
+    if mask is None:
+        return np.arange(count)
+    return np.flatnonzero(mask) if mask.any() else NO_ROWS
