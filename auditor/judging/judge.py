@@ -1,0 +1,201 @@
+"""Judge all machines of an audit: verdicts, findings in order of importance, the interval to work by hand."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from auditor.judging.closing import open_balance, withheld_figures
+from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.steps import steps_in_figures
+from auditor.judging.verdicts import judge_machine
+from auditor.records.errors import Exit
+from auditor.records.findings import Finding, FindingCode
+from auditor.records.result import MachineJudgement, WorkedInterval
+from auditor.records.verdicts import Closure, Status, Verdict
+
+if TYPE_CHECKING:
+    from auditor.records.balances import MachineBalance
+    from auditor.records.machines import Machine
+    from auditor.records.plant import Plant, Tag
+    from auditor.records.powers import PowerTable
+
+_TIERS = (
+    (FindingCode.IMPOSSIBLE_CLUSTER, FindingCode.OPEN_BALANCE),
+    (FindingCode.UNIT_SUSPECTED, FindingCode.FROZEN, FindingCode.TWO_METERS_DIFFER),
+    (FindingCode.CLOCK_STEP, FindingCode.CLOCK_OFFSET, FindingCode.STEP_IN_FIGURE),
+    (FindingCode.WITHHELD_FIGURE, FindingCode.MISSING_EXPORT, FindingCode.GAP, FindingCode.COUNTER_RESET),
+    (FindingCode.OUT_OF_RANGE, FindingCode.CONFLICT, FindingCode.CREEP_AT_STANDSTILL),
+    (FindingCode.HEATING_VALUE_CHANGED, FindingCode.REPEATED_HOUR, FindingCode.REJECTED_LINES),
+)
+"""Findings of an earlier tier stand first; within a tier the larger energy; anything else last."""
+
+_HEADLINES = ("gross", "net", "heat", "total")
+_KELVIN = 273.15
+
+
+@dataclass(frozen=True)
+class JudgingSettings:
+    """The slice of the plant that judging needs."""
+
+    machines: Mapping[str, Machine]
+    tags: Mapping[str, Tag]
+    interval_coverage: float
+
+    @classmethod
+    def from_plant(cls, plant: Plant) -> JudgingSettings:
+        """Take the slice from a plant."""
+        return cls(plant.machines, plant.tags, plant.rules.interval_coverage)
+
+
+@dataclass(frozen=True)
+class Judged:
+    """What judging hands on."""
+
+    judgements: Mapping[str, MachineJudgement]
+    findings: tuple[Finding, ...]
+    worked: WorkedInterval | None
+    status: Exit
+
+
+def judge(
+    balances: Mapping[str, MachineBalance],
+    powers: PowerTable,
+    settings: JudgingSettings,
+    earlier: Iterable[Finding],
+) -> Judged:
+    """Judge every machine and order all findings, those of the earlier rooms included.
+
+    Parameters
+    ----------
+    balances : mapping of machine to MachineBalance
+    powers : PowerTable
+        Base run; tells which tags and how much power a finding touches.
+    settings : JudgingSettings
+    earlier : iterable of Finding
+        Findings of reading, cleaning and metering.
+    """
+    findings = [_sized(finding, powers, settings) for finding in earlier]
+    findings += _kelvin_suspects(findings, settings)
+    judgements: dict[str, MachineJudgement] = {}
+    for name, balance in balances.items():
+        machine = settings.machines[name]
+        judgement = judge_machine(machine, balance, settings.interval_coverage)
+        judgements[name] = judgement
+        findings += impossible_clusters(machine, balance, judgement, powers, findings)
+        findings += open_balance(machine, balance, powers.grid)
+        findings += steps_in_figures(machine, balance, judgement)
+        findings += withheld_figures(machine, balance)
+    ordered = tuple(sorted(findings, key=_rank))
+    return Judged(judgements, ordered, _worked(balances, judgements), _status(balances, judgements, ordered))
+
+
+def _rank(finding: Finding) -> tuple[int, float, int, str]:
+    tier = next((rank for rank, codes in enumerate(_TIERS) if finding.code in codes), len(_TIERS))
+    energy = finding.energy_J if finding.energy_J is not None and np.isfinite(finding.energy_J) else 0.0
+    where = "|".join(
+        str(part) for part in (finding.code, finding.machine, finding.tag, finding.export, finding.file)
+    )
+    return tier, -energy, finding.start_us or 0, where
+
+
+def _sized(finding: Finding, powers: PowerTable, settings: JudgingSettings) -> Finding:
+    """Give a finding about a tag the energy that its streams carry in that time, where it has none yet.
+
+    The energy is the mean running power of the largest stream that the tag feeds, times the stretch.
+    """
+    if finding.energy_J is not None or finding.start_us is None or finding.end_us is None:
+        return finding
+    tags = {finding.tag} if finding.tag else set(finding.words.get("tags", "").split(", "))
+    largest_W = 0.0
+    for index, key in enumerate(powers.streams):
+        columns = {column.partition("=")[0] for column in powers.inputs[key]}
+        if not columns & tags:
+            continue
+        machine = key.partition(".")[0]
+        running = (powers.running[machine] == 1.0) & powers.known[:, index]
+        if running.any():
+            largest_W = max(largest_W, abs(float(powers.power_W[running, index].mean())))
+    if largest_W == 0.0:
+        return finding
+    return replace(finding, energy_J=largest_W * (finding.end_us - finding.start_us) / 1e6)
+
+
+def _kelvin_suspects(findings: list[Finding], settings: JudgingSettings) -> list[Finding]:
+    """Temperatures out of range that fall into it when read as kelvin: a question, never a correction."""
+    suspected = []
+    for finding in findings:
+        tag = settings.tags.get(finding.tag or "")
+        mean = finding.numbers.get("mean")
+        if finding.code is not FindingCode.OUT_OF_RANGE or tag is None or mean is None:
+            continue
+        if tag.quantity != "temperature" or tag.believable is None or abs(tag.offset - _KELVIN) > 1e-9:
+            continue
+        low, high = tag.believable
+        usual = finding.numbers.get("usual", np.nan)
+        as_kelvin = mean - _KELVIN
+        if low <= as_kelvin <= high and abs(as_kelvin - usual) < 0.2 * (high - low):
+            suspected.append(
+                replace(
+                    finding,
+                    code=FindingCode.UNIT_SUSPECTED,
+                    numbers={**finding.numbers, "as_kelvin_K": as_kelvin},
+                    words={**finding.words, "unit": "K", "declared": tag.unit},
+                    suspects=(tag.name,),
+                )
+            )
+    return suspected
+
+
+def _worked(
+    balances: Mapping[str, MachineBalance], judgements: Mapping[str, MachineJudgement]
+) -> WorkedInterval | None:
+    """Choose the interval to be worked by hand: an impossible one if there is any, else a typical one.
+
+    Typical: the credible interval whose headline efficiency is the median of its machine's.
+    """
+    for name, judgement in judgements.items():
+        hits = np.flatnonzero(judgement.verdict == Verdict.IMPOSSIBLE)
+        if hits.size >= PERSISTENT:
+            return WorkedInterval(name, int(hits[hits.size // 2]), "impossible")
+    for words in ((Verdict.CREDIBLE,), (Verdict.NO_CEILING, Verdict.IMPLAUSIBLE)):
+        for name in _machines_with_work_first(balances):
+            gross = balances[name].interval.values.get("gross", balances[name].interval.values.get("heat"))
+            if gross is None:
+                continue
+            good = np.flatnonzero(np.isin(judgements[name].verdict, words) & np.isfinite(gross))
+            if good.size:
+                order = good[np.argsort(gross[good], kind="stable")]
+                return WorkedInterval(name, int(order[order.size // 2]), "median efficiency")
+    return None
+
+
+def _machines_with_work_first(balances: Mapping[str, MachineBalance]) -> list[str]:
+    return sorted(balances, key=lambda name: "gross" not in balances[name].period)
+
+
+def _status(
+    balances: Mapping[str, MachineBalance],
+    judgements: Mapping[str, MachineJudgement],
+    findings: tuple[Finding, ...],
+) -> Exit:
+    """Exit code of a published audit.
+
+    A single impossible interval does not raise the alarm: noise gives some where the true margin is
+    small. It takes the period's own coherent verdict, or a cluster that persists, or an open balance.
+    """
+    persistent = any(
+        finding.code is FindingCode.IMPOSSIBLE_CLUSTER and finding.numbers["longest"] >= PERSISTENT
+        for finding in findings
+    )
+    is_open = any(balance.closure is Closure.OPEN for balance in balances.values())
+    if persistent or is_open or any(judgement.impossible_period for judgement in judgements.values()):
+        return Exit.LOOK
+    missing = any(finding.code is FindingCode.MISSING_EXPORT for finding in findings)
+    figures = (balance.period.get(key) for balance in balances.values() for key in _HEADLINES)
+    if missing or any(figure is not None and figure.status is not Status.FIRM for figure in figures):
+        return Exit.PROVISIONAL
+    return Exit.FIRM
