@@ -121,16 +121,16 @@ def test_a_slow_input_is_estimated_at_its_own_step() -> None:
 @pytest.mark.parametrize(
     ("between", "fields", "expected"),
     [
-        ("step", {"deadband": 5.0}, 5.0 / math.sqrt(12.0)),
+        ("step", {"deadband": 5.0}, 5.0 / math.sqrt(3.0)),
         ("step", {"resolution": 0.1}, 0.1 / math.sqrt(12.0)),
-        ("step", {"deadband": 5.0, "resolution": 2.0}, math.sqrt(29.0 / 12.0)),
+        ("step", {"deadband": 5.0, "resolution": 2.0}, math.sqrt(25.0 / 3.0 + 4.0 / 12.0)),
         ("amount", {"resolution": 6.0, "stamp_marks": "end"}, 6.0 / math.sqrt(12.0) / 60.0),
     ],
 )
 def test_dead_band_and_resolution_are_rectangular(
     between: str, fields: dict[str, object], expected: float
 ) -> None:
-    """Half the dead-band or half a step as limit, over sqrt(3) (JCGM 100:2008 4.3.7)."""
+    """The dead band, or half a step of resolution, as limit over sqrt(3) (JCGM 100:2008 4.3.7)."""
     table, _ = run(Setting([make_tag("x", between, hold_s=120.0, **fields)]), samples(np.full(62, 7.0), 60.0))
     assert table.noise[1:, 0] == pytest.approx(np.full(59, expected), rel=1e-12)
 

@@ -49,7 +49,7 @@ def tick_noise(tag: Tag, series: TickSeries, grid: Grid) -> tuple[NDArray[np.flo
       local day, zeros left out. Second differences are blind to steady movement: a ramp of the process is
       no noise. Taken over tick means they also hold whatever correlation there is between the samples of a
       tick. Values stored only when they change, and counters of known resolution, are not estimated.
-    - *dead-band*: half of it as the limit of a rectangular distribution, ``d / sqrt(12)``, also for values
+    - *dead-band*: the limit, either way, of a rectangular distribution, ``d / sqrt(3)``, also for values
       that are stored only when they change.
     - *resolution* q: ``q / sqrt(12)``, not made smaller by averaging, as the errors of neighbours are alike.
       The difference of two readings of a counter has ``q / sqrt(6)``, over the time between them.
@@ -72,7 +72,8 @@ def tick_noise(tag: Tag, series: TickSeries, grid: Grid) -> tuple[NDArray[np.flo
     variance = nan.copy()
     variance += _sampling(tag, series, length_s, stride, grid) ** 2
     if tag.deadband is not None:
-        variance += tag.deadband**2 / 12.0
+        # The value in force may have moved by up to the dead band either way: a limit, rectangular.
+        variance += tag.deadband**2 / 3.0
     if tag.resolution is not None:
         variance += _resolution(tag, tag.resolution, length_s) ** 2
     if (series.share < 1.0).any():

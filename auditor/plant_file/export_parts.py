@@ -101,7 +101,8 @@ class CounterTag(NumberTag):
         "longest time between two readings over which their difference is spread", "15 min", default="15 min"
     )
     full_scale: OwnUnitValue | None = optional(
-        "reading at which the counter begins again at zero", "9999999 kWh"
+        "number of units after which the counter begins again at zero: of seven digits, 10000000",
+        "10000000 kWh",
     )
 
 

@@ -13,7 +13,8 @@ class Uncertainty:
     """
 
     absolute: float
-    """In the SI unit of the value (kelvin for temperatures: a difference, not a level)."""
+    """In the SI unit of the value (kelvin for temperatures: a difference, not a level); per second for the
+    calibration part of a counter or an amount, whose tick means are rates."""
     relative: float
     """Share of the reading [1]."""
     declared: str
