@@ -1,0 +1,63 @@
+"""The files of one export to blocks of samples in order of time."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from auditor.log_reading.file_reading import FileReader
+from auditor.log_reading.merge import ALWAYS, NEVER, Source, merge
+from auditor.log_reading.notes import unread_note, with_late_rows
+from auditor.log_reading.pieces import Piece
+from auditor.log_reading.recognition import RecognisedFile, Recognition
+from auditor.records.plant import Export
+from auditor.records.samples import ReadingNote, SampleBlock
+
+_SLACK_US = 3 * 3_600_000_000
+"""How far stamps may fall back inside a large file of which samples are in order."""
+
+
+def read_export(
+    recognition: Recognition, export_name: str, window_us: tuple[int, int]
+) -> Iterator[SampleBlock | ReadingNote]:
+    """Read the files of one export that meet a stretch of time.
+
+    Parameters
+    ----------
+    recognition : Recognition
+        What :func:`~auditor.log_reading.recognition.recognise` gave.
+    export_name : str
+        Name of the export.
+    window_us : tuple of int
+        Half-open stretch, UTC microseconds. Rows outside are counted, not handed on.
+
+    Yields
+    ------
+    SampleBlock or ReadingNote
+        Blocks in order of time, each no earlier than the one before; the note of a file when its last
+        line has been read (rows of it may still be waiting to be merged with those of other files).
+
+    Notes
+    -----
+    Memory is that of a few chunks, plus the stretch over which files overlap, plus the whole of a
+    file whose rows are not in order.
+    """
+    export = recognition.exports[export_name]
+    sources = []
+    for file in recognition.files[export_name]:
+        if file.lies_outside(window_us):
+            yield unread_note(file, export_name)
+        else:
+            sources.append(_source(file, recognition, export, window_us))
+    yield from merge(sources, export, with_late_rows)
+
+
+def _source(
+    file: RecognisedFile, recognition: Recognition, export: Export, window_us: tuple[int, int]
+) -> Source:
+    def read() -> Iterator[Piece | ReadingNote]:
+        return FileReader(file, export, recognition.tags, window_us).read()
+
+    margin_us = 0 if file.is_whole else _SLACK_US
+    slack_us = margin_us if file.is_ordered else NEVER
+    floor_us = file.first_us - margin_us if file.has_stamps else ALWAYS
+    return Source(file.path, file.claim.pattern, floor_us, slack_us, read)

@@ -1,0 +1,346 @@
+"""What all exports of a site turned out to be, pooled over all files of each export."""
+
+from __future__ import annotations
+
+import difflib
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key, unit_faults
+from auditor.log_reading.encoding import Encoding
+from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
+from auditor.log_reading.look import Contradiction, Look, look_at
+from auditor.records.errors import Fault, PlantFileError
+from auditor.records.findings import Finding, FindingCode
+from auditor.records.plant import Export, Tag
+
+_FOLDER_OF_MANY = 3
+"""So many unclaimed files of one folder are told as one."""
+
+
+@dataclass(frozen=True)
+class RecognisedFile:
+    """One file of an export, ready to be read."""
+
+    claim: Claim
+    encoding: Encoding
+    dialect: Dialect
+    first_us: int
+    last_us: int
+    is_whole: bool
+    """Its range and order are known of every line, not of samples only."""
+    is_ordered: bool
+    is_descending: bool
+    stamp_format: str
+    evidence: tuple[str, ...]
+
+    @property
+    def path(self) -> str:
+        """Path below ``logs/``."""
+        return self.claim.stored.path
+
+    @property
+    def has_stamps(self) -> bool:
+        """Whether any stamp was found; without one its range is empty."""
+        return self.first_us <= self.last_us
+
+    def lies_outside(self, window_us: tuple[int, int]) -> bool:
+        """Whether the file is known to have no row inside a half-open stretch."""
+        is_apart = self.last_us < window_us[0] or self.first_us >= window_us[1]
+        return is_apart and self.has_stamps and (self.is_whole or self.is_ordered)
+
+
+@dataclass(frozen=True)
+class UnopenedFile:
+    """A file that no export will read, and why."""
+
+    stored: StoredFile
+    export: str | None
+    pattern: int | None
+    reason: str
+
+
+@dataclass(frozen=True)
+class Recognition:
+    """Everything that is known about the files below ``logs/`` before they are read."""
+
+    logs: Path
+    exports: Mapping[str, Export]
+    tags: Mapping[str, Tag]
+    files: Mapping[str, tuple[RecognisedFile, ...]]
+    """Per export, in order of precedence: by pattern, then by path."""
+    unopened: tuple[UnopenedFile, ...]
+    findings: tuple[Finding, ...]
+
+    def ranges(self) -> Iterator[tuple[str, int, int]]:
+        """Give stored files with their first and last stamp; an archive with those of all its members."""
+        spans: dict[str, tuple[int, int]] = {}
+        for files in self.files.values():
+            for file in files:
+                if not file.has_stamps:
+                    continue
+                name = file.path.partition("!")[0] if file.claim.stored.member else file.path
+                first_us, last_us = spans.get(name, (file.first_us, file.last_us))
+                spans[name] = (min(first_us, file.first_us), max(last_us, file.last_us))
+        for name, (first_us, last_us) in sorted(spans.items()):
+            yield name, first_us, last_us
+
+
+def recognise(logs: Path, exports: Mapping[str, Export], tags: Mapping[str, Tag]) -> Recognition:
+    """List every file below ``logs/`` and recognise what each claimed one is.
+
+    Parameters
+    ----------
+    logs : path
+        The folder of exports; only ever read.
+    exports, tags : mapping
+        As the plant file declares them, by name.
+
+    Raises
+    ------
+    PlantFileError
+        With every fault at once: a file claimed twice, a heading that is in none of an export's files
+        or bound and doubled, a unit row that differs, a date order or decimal mark that the data
+        contradict, an export whose stamps cannot be read.
+    """
+    listing = list_logs(logs, exports)
+    faults: list[Fault] = []
+    findings: list[Finding] = []
+    unopened = [UnopenedFile(stored, None, None, stored.set_aside) for stored in listing.unclaimed]
+    files: dict[str, tuple[RecognisedFile, ...]] = {}
+    for claim, reason in listing.unreadable:
+        unopened.append(UnopenedFile(claim.stored, claim.export or None, claim.pattern, reason))
+        findings.append(_unreadable(claim, reason))
+    for name, export in exports.items():
+        claims = [claim for claim in listing.claims if claim.export == name]
+        if not claims:
+            findings.append(
+                Finding(FindingCode.MISSING_EXPORT, export=name, words={"files": ", ".join(export.files)})
+            )
+            files[name] = ()
+            continue
+        pool = _Pool(export, {tag: tags[tag] for tag in export.tags})
+        for claim in claims:
+            pool.add(claim)
+        faults += pool.faults()
+        findings += pool.findings()
+        unopened += pool.unopened
+        files[name] = pool.files()
+        if not files[name] and not pool.fields:
+            findings.append(
+                Finding(FindingCode.MISSING_EXPORT, export=name, words={"files": ", ".join(export.files)})
+            )
+    if faults:
+        raise PlantFileError(faults)
+    findings += _unclaimed(listing)
+    ordered = tuple(sorted(unopened, key=lambda file: file.stored.path))
+    return Recognition(logs, exports, tags, files, ordered, tuple(findings))
+
+
+class _Pool:
+    """All files of one export, looked at one by one and judged together."""
+
+    def __init__(self, export: Export, tags: Mapping[str, Tag]) -> None:
+        self.export, self.tags = export, tags
+        self.looks: list[Look] = []
+        self.unopened: list[UnopenedFile] = []
+        self.fields: list[str] = []
+        """Fields of files without a heading row: where a misspelt heading may stand."""
+        self._unreadable: list[Finding] = []
+
+    def add(self, claim: Claim) -> None:
+        try:
+            look = look_at(claim, self.export, self.tags)
+        except READ_ERRORS as error:
+            self._refuse(claim, reason_of(error))
+            return
+        if isinstance(look, Look):
+            self.looks.append(look)
+        else:
+            self.fields += [field for field in look if field.isprintable()]
+            self._refuse(claim, "no heading row")
+
+    def _refuse(self, claim: Claim, reason: str) -> None:
+        self.unopened.append(UnopenedFile(claim.stored, claim.export, claim.pattern, reason))
+        self._unreadable.append(_unreadable(claim, reason))
+
+    def faults(self) -> list[Fault]:
+        """Everything that contradicts the plant file."""
+        if not self.looks and not self.fields:
+            return []
+        faults = self._missing_headings()
+        for look in self.looks:
+            where = f"logs/{look.claim.stored.path}:{look.dialect.heading_line}"
+            for name, places in duplicate_headings(look.dialect, self.export, self.tags):
+                at = " and ".join(str(place) for place in places)
+                found = f'the heading "{name}" stands in columns {at}'
+                faults.append(Fault(where, found, "give the two columns different headings in the export"))
+            faults += unit_faults(look.dialect, look.head, look.claim.stored.path, self.tags)[0]
+        return faults + self._contradictions()
+
+    def findings(self) -> list[Finding]:
+        """Return what is odd, but no fault."""
+        unclaimed: dict[str, None] = {}
+        for look in self.looks:
+            if look.dialect.is_long:
+                bound = {heading_key(tag.column) for tag in self.tags.values()}
+                unclaimed |= dict.fromkeys(name for name in look.long_names if name and name not in bound)
+            unclaimed |= dict.fromkeys(look.dialect.headings[place] for place in look.dialect.unclaimed)
+        found = list(self._unreadable)
+        if unclaimed:
+            found.append(
+                Finding(
+                    FindingCode.UNCLAIMED_COLUMN,
+                    export=self.export.name,
+                    numbers={"count": len(unclaimed)},
+                    words={"columns": ", ".join(unclaimed)},
+                )
+            )
+        return found
+
+    def files(self) -> tuple[RecognisedFile, ...]:
+        """Return the files to be read, in order of precedence."""
+        looks = sorted(self.looks, key=lambda look: (look.claim.pattern, look.claim.stored.path))
+        return tuple(self._file(look) for look in looks)
+
+    def _file(self, look: Look) -> RecognisedFile:
+        missing = (
+            []
+            if look.dialect.is_long
+            else [tag for tag in self.export.tags if tag not in look.dialect.columns]
+        )
+        evidence = [f"{look.encoding.shown}: {look.encoding.evidence}", *look.dialect.evidence]
+        evidence += unit_faults(look.dialect, look.head, look.claim.stored.path, self.tags)[1]
+        if look.dates_proven:
+            evidence.append(f"its stamps can only be read {self.export.date_order}, as declared")
+        elif not self.export.date_order.startswith("epoch"):
+            evidence.append(
+                f"stamps are read {self.export.date_order}, as declared; this file alone would not prove it"
+            )
+        if look.decimal_proven:
+            mark = "comma" if self.export.decimal == "," else "point"
+            evidence.append(f"its numbers have a decimal {mark}, as declared")
+        if missing:
+            evidence.append(f"it has no column for {', '.join(missing)}")
+        if not look.is_ordered:
+            evidence.append(
+                "its rows run from new to old" if look.is_descending else "its rows are not in order of time"
+            )
+        return RecognisedFile(
+            claim=look.claim,
+            encoding=look.encoding,
+            dialect=look.dialect,
+            first_us=look.first_us,
+            last_us=look.last_us,
+            is_whole=look.is_whole,
+            is_ordered=look.is_ordered,
+            is_descending=look.is_descending,
+            stamp_format=look.stamp_format,
+            evidence=tuple(evidence),
+        )
+
+    def _missing_headings(self) -> list[Fault]:
+        export = self.export
+        headings = list(
+            dict.fromkeys([name for look in self.looks for name in look.dialect.headings] + self.fields)
+        )
+        names, where = headings, f"exports.{export.name}"
+        wanted = [(f"exports.{export.name}.stamp_columns", name) for name in export.stamp_columns]
+        if export.layout is not None:
+            keys = ("stamp", "tag", "value")
+            wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key)) for key in keys]
+        else:
+            wanted += [(f"{where}.tags.{name}.column", tag.column) for name, tag in self.tags.items()]
+        faults = [
+            _no_heading(key, name, names, self) for key, name in wanted if heading_key(name) not in headings
+        ]
+        if export.layout is not None and self.looks and all(look.is_whole for look in self.looks):
+            points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
+            faults += [
+                _no_heading(f"{where}.tags.{name}.column", tag.column, points, self)
+                for name, tag in self.tags.items()
+                if heading_key(tag.column) not in points
+            ]
+        return faults
+
+    def _contradictions(self) -> list[Fault]:
+        faults = []
+        key = f"exports.{self.export.name}"
+        if not any(look.dates_proven for look in self.looks):
+            found = next(((x, x.date_contradiction) for x in self.looks if x.date_contradiction), None)
+            if found is not None:
+                faults.append(_contradicted(*found, f"{key}.date_order", self.export.date_order))
+        if not any(look.decimal_proven for look in self.looks):
+            found = next(((x, x.decimal_contradiction) for x in self.looks if x.decimal_contradiction), None)
+            if found is not None:
+                faults.append(_contradicted(*found, f"{key}.decimal", self.export.decimal))
+        bad = next((look for look in self.looks if look.bad_stamp is not None), None)
+        if (
+            not faults
+            and bad is not None
+            and bad.bad_stamp
+            and not any(look.has_stamps for look in self.looks)
+        ):
+            line, text = bad.bad_stamp
+            faults.append(
+                Fault(
+                    f"logs/{bad.claim.stored.path}:{line}, {key}.date_order",
+                    f'no stamp of this export can be read; the first is "{text}"',
+                    f"declare the order of the date ({key}.date_order) and, where the stamp is not the first"
+                    f" column, {key}.stamp_columns; days, months and hours are read as digits only",
+                )
+            )
+        return faults
+
+
+def _no_heading(key: str, name: str, names: Sequence[str], pool: _Pool) -> Fault:
+    near = difflib.get_close_matches(heading_key(name), list(names), 3, 0.5)
+    files = len(pool.looks) + len(pool.unopened)
+    nearest = "nearest: " + ", ".join(f'"{word}"' for word in near) if near else "there is none like it"
+    return Fault(
+        f"plant.toml, {key}",
+        f'"{name}" is in none of the {files} files of export {pool.export.name}; {nearest}',
+        "write the name exactly as it stands in the export, or correct the export's files",
+    )
+
+
+def _contradicted(look: Look, found: Contradiction, key: str, declared: str) -> Fault:
+    return Fault(
+        f"logs/{look.claim.stored.path}:{found.line}, column {found.column}",
+        f'"{found.text}" cannot be read with {key} = "{declared}", and nothing in this export needs it;'
+        f' it can be read with "{found.reads_as}"',
+        f'set {key} = "{found.reads_as}", if that is how this logger writes',
+    )
+
+
+def _unreadable(claim: Claim, reason: str) -> Finding:
+    return Finding(
+        FindingCode.UNREADABLE_FILE,
+        export=claim.export or None,
+        file=claim.stored.path,
+        words={"reason": reason},
+    )
+
+
+def _unclaimed(listing: Listing) -> list[Finding]:
+    """Files that no pattern claims: one finding each, or one for a folder of many."""
+    folders: dict[str, list[StoredFile]] = {}
+    for stored in listing.unclaimed:
+        if not stored.set_aside:
+            folders.setdefault(stored.path.rpartition("/")[0], []).append(stored)
+    findings = []
+    for folder, stored_files in folders.items():
+        if len(stored_files) <= _FOLDER_OF_MANY:
+            findings += [
+                Finding(
+                    FindingCode.UNCLAIMED_FILE, file=stored.path, numbers={"count": 1, "bytes": stored.bytes}
+                )
+                for stored in stored_files
+            ]
+            continue
+        names = [stored.path.rpartition("/")[2] for stored in stored_files]
+        numbers = {"count": len(names), "bytes": sum(stored.bytes for stored in stored_files)}
+        words = {"first": names[0], "last": names[-1]}
+        findings.append(Finding(FindingCode.UNCLAIMED_FILE, file=f"{folder}/", numbers=numbers, words=words))
+    return findings

@@ -1,0 +1,304 @@
+"""Stamps: texts to microseconds of the logger's own clock, whole columns at a time.
+
+Stamps of one length and one arrangement of digits are read together, digit by digit, so there is no
+format to guess: the declared order of the date and the places of the digits decide. Nothing is ever
+rolled over; a 31 February is no stamp.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from auditor.records.plant import DateOrder
+
+Part = Literal["both", "date", "time"]
+NO_OFFSET = np.iinfo(np.int64).min
+"""Marks a stamp whose text names no offset from UTC."""
+
+DAY_US = 86_400_000_000
+_MOST_SHAPES = 64
+_FIRST_YEAR, _LAST_YEAR = 1990, 2100
+_FIRST_US = 631_152_000_000_000
+"""1990-01-01 in microseconds since 1970-01-01; ``_LAST_US`` is 2101-01-01."""
+_LAST_US = 4_133_980_800_000_000
+_PIVOT = 70
+"""Two-digit years from here on belong to the 1900s."""
+_DAYS = np.array([0, 31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31], dtype=np.int64)
+
+_YEAR, _MONTH, _DAY = "(?P<Y>0000|00)", "(?P<M>00?)", "(?P<D>00?)"
+_MARK, _AGAIN = r"(?P<mark>[-/. ])", r"(?P=mark)"
+_DATES = {
+    "year first": f"(?:{_YEAR}{_MARK}{_MONTH}{_AGAIN}{_DAY}|(?P<Y2>0000)(?P<M2>00)(?P<D2>00))",
+    "day first": f"(?:{_DAY}{_MARK}{_MONTH}{_AGAIN}{_YEAR}|(?P<D2>00)(?P<M2>00)(?P<Y2>0000))",
+    "month first": f"(?:{_MONTH}{_MARK}{_DAY}{_AGAIN}{_YEAR}|(?P<M2>00)(?P<D2>00)(?P<Y2>0000))",
+}
+_TIME = (
+    r"(?:(?P<h>00?)[:.h](?P<m>00)(?:[:.m](?P<s>00)s?(?:[.,](?P<f>0+))?)?"
+    r"|(?P<h2>00)(?P<m2>00)(?:(?P<s2>00)(?:[.,](?P<f2>0+))?)?)"
+)
+_ZONE = r"(?: ?(?P<z>[Zz]|UTC|GMT)| ?(?P<sign>[+-])(?P<zh>00):?(?P<zm>00)?)?"
+_BETWEEN = r"(?:[Tt_]|[ ,]+|-| - )"
+_EPOCH = re.compile(r"(?P<units>0{1,14})(?:[.,](?P<f>0+))?")
+_SPANS_US = {"h": 3_600_000_000, "m": 60_000_000, "s": 1_000_000}
+
+
+@dataclass(frozen=True)
+class Texts:
+    """A column of texts: one buffer of bytes and the ends of each text in it."""
+
+    data: NDArray[np.uint8]
+    starts: NDArray[np.int64]
+    ends: NDArray[np.int64]
+
+    def __len__(self) -> int:
+        return int(self.starts.shape[0])
+
+    def at(self, row: int) -> str:
+        """One text."""
+        return bytes(self.data[self.starts[row] : self.ends[row]]).decode("utf-8", "replace")
+
+    def take(self, rows: NDArray[np.int64]) -> Texts:
+        """Pick some of the texts."""
+        return Texts(self.data, self.starts[rows], self.ends[rows])
+
+
+@dataclass(frozen=True)
+class Stamps:
+    """Stamps of one column (or of a date and a time column together)."""
+
+    local_us: NDArray[np.int64]
+    """Reading of the clock on the wall as microseconds since 1970-01-01, shape (n,)."""
+    offset_us: NDArray[np.int64]
+    """Offset from UTC that the text itself names; ``NO_OFFSET`` where it names none."""
+    good: NDArray[np.bool_]
+
+
+def texts_of(words: Sequence[str]) -> Texts:
+    """Lay out a list of texts as a column."""
+    pieces = [word.encode("utf-8", "replace") for word in words]
+    ends = np.cumsum([len(piece) for piece in pieces], dtype=np.int64)
+    starts = np.concatenate([np.zeros(1, np.int64), ends[:-1]]) if pieces else ends
+    return Texts(np.frombuffer(b"".join(pieces) or b"\0", np.uint8), starts, ends)
+
+
+def read_stamps(columns: Sequence[Texts], order: DateOrder) -> Stamps:
+    """Read stamps of one column, or of a date and a time column.
+
+    Parameters
+    ----------
+    columns : sequence of Texts
+        One column, or two: date, then time of day.
+    order : str
+        Declared order of the date, or which epoch.
+
+    Returns
+    -------
+    Stamps
+        Years outside 1990...2100 (a clock that lost its battery) are not good.
+    """
+    if order in ("epoch seconds", "epoch milliseconds"):
+        return _read_part(columns[0], order, "both")
+    if len(columns) == 1:
+        return _read_part(columns[0], order, "both")
+    date, time = _read_part(columns[0], order, "date"), _read_part(columns[1], order, "time")
+    return Stamps(date.local_us + time.local_us, time.offset_us, date.good & time.good)
+
+
+def shape_in_words(text: str, order: DateOrder) -> str:
+    """Describe how a stamp is written: ``day.month.year hour:minute:second``.
+
+    Examples
+    --------
+    >>> shape_in_words("31.10.2025 23:59:00", "day first")
+    'day.month.year hour:minute:second'
+    >>> shape_in_words("2026-07-01T00:00:00.250Z", "year first")
+    'year-month-dayThour:minute:second.fraction with its offset from UTC'
+    """
+    if order.startswith("epoch"):
+        return order.removeprefix("epoch ") + " since 1970-01-01 UTC"
+    plan = _plan(_shape(text.strip()), order, "both") or _plan(_shape(text.strip()), order, "date")
+    if plan is None:
+        return ""
+    names = {
+        "Y": "year",
+        "M": "month",
+        "D": "day",
+        "h": "hour",
+        "m": "minute",
+        "s": "second",
+        "f": "fraction",
+    }
+    spans = sorted((span, names[key]) for key, span in plan.spans.items() if key in names)
+    out, place, stripped = "", 0, text.strip()
+    for (start, end), name in spans:
+        out, place = out + stripped[place:start] + name, end
+    return out + (" with its offset from UTC" if plan.is_zoned else "")
+
+
+@dataclass(frozen=True)
+class _Plan:
+    """Where the digits of one shape of stamp stand."""
+
+    spans: dict[str, tuple[int, int]]
+    is_utc: bool
+    sign: int
+    """-1 or +1 with an offset in the text, else 0."""
+
+    @property
+    def is_zoned(self) -> bool:
+        return self.is_utc or self.sign != 0
+
+
+@lru_cache(maxsize=1024)
+def _plan(shape: str, order: DateOrder, part: Part) -> _Plan | None:
+    """Find the places of year, month... in a shape (a stamp whose digits are all ``0``)."""
+    if order.startswith("epoch"):
+        found = _EPOCH.fullmatch(shape)
+    elif part == "time":
+        found = re.fullmatch(_TIME + _ZONE, shape)
+    elif part == "date":
+        # A date column may carry an idle midnight of its own.
+        found = re.fullmatch(_DATES[order] + rf"(?:{_BETWEEN}[0:.]+)?", shape)
+    else:
+        glued = "" if re.fullmatch("0{12}|0{14}", shape) else _BETWEEN
+        found = re.fullmatch(_DATES[order] + rf"(?:{glued}{_TIME}{_ZONE})?", shape)
+    if found is None:
+        return None
+    spans = {
+        key.rstrip("2"): found.span(key)
+        for key, text in found.groupdict().items()
+        if text is not None and key not in ("mark", "z", "sign")
+    }
+    named = found.groupdict()
+    sign = {"-": -1, "+": 1}.get(named.get("sign") or "", 0)
+    return _Plan(spans, named.get("z") is not None, sign)
+
+
+def _shape(text: str) -> str:
+    return re.sub("[0-9]", "0", text)
+
+
+def _read_part(texts: Texts, order: DateOrder, part: Part) -> Stamps:
+    n = len(texts)
+    out = Stamps(np.zeros(n, np.int64), np.full(n, NO_OFFSET), np.zeros(n, np.bool_))
+    if n == 0:
+        return out
+    starts, ends = _without_blanks(texts)
+    lengths = ends - starts
+    if lengths[0] > 0 and (lengths == lengths[0]).all():
+        _read_length(texts.data, starts, int(lengths[0]), None, (order, part, out))
+        return out
+    for length in np.unique(lengths):
+        if 0 < length <= 40:
+            rows = np.flatnonzero(lengths == length)
+            _read_length(texts.data, starts[rows], int(length), rows, (order, part, out))
+    return out
+
+
+def _without_blanks(texts: Texts) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    starts, ends = texts.starts, texts.ends
+    for _ in range(8):
+        lead = (starts < ends) & (texts.data[np.minimum(starts, texts.data.size - 1)] == 32)
+        if not lead.any():
+            break
+        starts = starts + lead
+    for _ in range(8):
+        trail = (starts < ends) & (texts.data[np.maximum(ends - 1, 0)] == 32)
+        if not trail.any():
+            break
+        ends = ends - trail
+    return starts, ends
+
+
+def _read_length(
+    data: NDArray[np.uint8],
+    starts: NDArray[np.int64],
+    length: int,
+    rows: NDArray[np.int64] | None,
+    into: tuple[DateOrder, Part, Stamps],
+) -> None:
+    """Read all stamps of one length, one arrangement of digits after the other."""
+    order, part, out = into
+    steps = np.diff(starts)
+    if steps.size == 0 or (steps == length).all():
+        letters = data[starts[0] : starts[0] + starts.size * length].reshape(-1, length)
+    else:
+        letters = data[starts[:, None] + np.arange(length)]
+    left = np.arange(starts.size)
+    for _ in range(_MOST_SHAPES):
+        some = letters if left.size == starts.size else letters[left]
+        digits = some - np.uint8(48)
+        is_digit = digits < 10
+        alike = np.where(is_digit[0], is_digit, some == some[0]).all(axis=1)
+        shape = _shape(bytes(some[0]).decode("latin-1"))
+        plan = _plan(shape, order, part)
+        if plan is not None:
+            at = left[alike]
+            local, offset, good = _compute(digits if alike.all() else digits[alike], plan, order)
+            where = at if rows is None else rows[at]
+            out.local_us[where], out.offset_us[where], out.good[where] = local, offset, good
+        left = left[~alike]
+        if left.size == 0:
+            return
+
+
+def _compute(
+    digits: NDArray[np.uint8], plan: _Plan, order: DateOrder
+) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.bool_]]:
+    n = digits.shape[0]
+
+    def number(key: str) -> NDArray[np.int64]:
+        start, end = plan.spans.get(key, (0, 0))
+        total = np.zeros(n, np.int64)
+        for place in range(start, min(end, start + 18)):
+            total = total * 10 + digits[:, place]
+        return total
+
+    def fraction_us() -> NDArray[np.int64]:
+        start, end = plan.spans.get("f", (0, 0))
+        total = np.zeros(n, np.int64)
+        for place in range(start, start + 6):
+            total = total * 10 + (digits[:, place] if place < end else 0)
+        return total
+
+    if order.startswith("epoch"):
+        scale = 1_000_000 if order == "epoch seconds" else 1_000
+        local = number("units") * scale + fraction_us() * scale // 1_000_000
+        return local, np.zeros(n, np.int64), (local >= _FIRST_US) & (local < _LAST_US)
+    hour, minute, second, fraction = number("h"), number("m"), number("s"), fraction_us()
+    good = (minute < 60) & (second < 60) & ((hour < 24) | ((hour == 24) & (minute + second + fraction == 0)))
+    local = hour * _SPANS_US["h"] + minute * _SPANS_US["m"] + second * _SPANS_US["s"] + fraction
+    if "Y" in plan.spans:
+        year, month, day = number("Y"), number("M"), number("D")
+        if plan.spans["Y"][1] - plan.spans["Y"][0] == 2:
+            year = year + np.where(year < _PIVOT, 2000, 1900)
+        good &= _is_date(year, month, day)
+        local = local + _days(year, month, day) * DAY_US
+    offset = np.full(n, NO_OFFSET)
+    if plan.is_zoned:
+        zone_hour, zone_minute = number("zh"), number("zm")
+        offset = plan.sign * (zone_hour * _SPANS_US["h"] + zone_minute * _SPANS_US["m"])
+        good &= (zone_hour < 15) & (zone_minute < 60)
+    return local, offset, good
+
+
+def _is_date(year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64]) -> NDArray[np.bool_]:
+    leap = (year % 4 == 0) & ((year % 100 != 0) | (year % 400 == 0))
+    longest = _DAYS[np.clip(month, 0, 12)] + (leap & (month == 2))
+    in_year: NDArray[np.bool_] = (month >= 1) & (month <= 12) & (day >= 1) & (day <= longest)
+    in_year &= (year >= _FIRST_YEAR) & (year <= _LAST_YEAR)
+    return in_year
+
+
+def _days(year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Days since 1970-01-01 in the Gregorian calendar, counting years from March."""
+    shifted = year - (month <= 2)
+    in_year = (153 * (month + np.where(month > 2, -3, 9)) + 2) // 5 + day - 1
+    return shifted * 365 + shifted // 4 - shifted // 100 + shifted // 400 + in_year - 719_468
