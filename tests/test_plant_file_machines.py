@@ -96,6 +96,26 @@ def test_sinks_may_be_several(tmp_path):
     assert "loss" in said["machines.orc.ceiling.sink"]
 
 
+def test_a_ceiling_must_take_in_all_heat(tmp_path):
+    """A second source, or a sink left out, would let a sound machine beat the ceiling of the rest."""
+    second = _changed(
+        "emberlund",
+        (
+            "streams.power   = ",
+            'streams.extra = { role = "heat in", same_as = "coil.exhaust" }\nstreams.power   = ',
+        ),
+    )
+    assert '"extra" brings heat in too' in _said(tmp_path, second)["machines.orc.ceiling.source"]
+    left_out = _changed(
+        "emberlund",
+        (
+            "streams.power   = ",
+            'streams.warm = { role = "useful heat", same_as = "coil.exhaust" }\nstreams.power   = ',
+        ),
+    )
+    assert 'sink = ["air", "warm"]' in _said(tmp_path, left_out)["machines.orc.ceiling.sink"]
+
+
 def test_a_gauge_pressure_needs_the_air_pressure(tmp_path):
     """A gauge pressure at the gas meter asks for the site's air pressure; an absolute one does not."""
     air = 'air_pressure = { from = "altitude", standard = "0.9 kPa" } '

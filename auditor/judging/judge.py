@@ -11,6 +11,7 @@ import numpy as np
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
 from auditor.judging.steps import steps_in_figures
+from auditor.judging.units import unit_suspects
 from auditor.judging.verdicts import judge_machine
 from auditor.records.errors import Exit
 from auditor.records.findings import Finding, FindingCode
@@ -22,10 +23,11 @@ if TYPE_CHECKING:
     from auditor.records.machines import Machine
     from auditor.records.plant import Plant, Tag
     from auditor.records.powers import PowerTable
+    from auditor.records.ticks import TickTable
 
 _TIERS = (
     (FindingCode.IMPOSSIBLE_CLUSTER, FindingCode.OPEN_BALANCE),
-    (FindingCode.UNIT_SUSPECTED, FindingCode.FROZEN, FindingCode.TWO_METERS_DIFFER),
+    (FindingCode.UNIT_SUSPECTED, FindingCode.FROZEN),
     (FindingCode.CLOCK_STEP, FindingCode.CLOCK_OFFSET, FindingCode.STEP_IN_FIGURE),
     (FindingCode.WITHHELD_FIGURE, FindingCode.MISSING_EXPORT, FindingCode.GAP, FindingCode.COUNTER_RESET),
     (FindingCode.OUT_OF_RANGE, FindingCode.CONFLICT, FindingCode.CREEP_AT_STANDSTILL),
@@ -34,7 +36,6 @@ _TIERS = (
 """Findings of an earlier tier stand first; within a tier the larger energy; anything else last."""
 
 _HEADLINES = ("gross", "net", "heat", "total")
-_KELVIN = 273.15
 
 
 @dataclass(frozen=True)
@@ -64,6 +65,7 @@ class Judged:
 def judge(
     balances: Mapping[str, MachineBalance],
     powers: PowerTable,
+    ticks: TickTable,
     settings: JudgingSettings,
     earlier: Iterable[Finding],
 ) -> Judged:
@@ -74,12 +76,14 @@ def judge(
     balances : mapping of machine to MachineBalance
     powers : PowerTable
         Base run; tells which tags and how much power a finding touches.
+    ticks : TickTable
+        Tells what a tag usually reads.
     settings : JudgingSettings
     earlier : iterable of Finding
         Findings of reading, cleaning and metering.
     """
-    findings = [_sized(finding, powers, settings) for finding in earlier]
-    findings += _kelvin_suspects(findings, settings)
+    findings = [_sized(finding, powers) for finding in earlier]
+    findings += unit_suspects(findings, ticks, settings.tags)
     judgements: dict[str, MachineJudgement] = {}
     for name, balance in balances.items():
         machine = settings.machines[name]
@@ -102,7 +106,7 @@ def _rank(finding: Finding) -> tuple[int, float, int, str]:
     return tier, -energy, finding.start_us or 0, where
 
 
-def _sized(finding: Finding, powers: PowerTable, settings: JudgingSettings) -> Finding:
+def _sized(finding: Finding, powers: PowerTable) -> Finding:
     """Give a finding about a tag the energy that its streams carry in that time, where it has none yet.
 
     The energy is the mean running power of the largest stream that the tag feeds, times the stretch.
@@ -122,32 +126,6 @@ def _sized(finding: Finding, powers: PowerTable, settings: JudgingSettings) -> F
     if largest_W == 0.0:
         return finding
     return replace(finding, energy_J=largest_W * (finding.end_us - finding.start_us) / 1e6)
-
-
-def _kelvin_suspects(findings: list[Finding], settings: JudgingSettings) -> list[Finding]:
-    """Temperatures out of range that fall into it when read as kelvin: a question, never a correction."""
-    suspected = []
-    for finding in findings:
-        tag = settings.tags.get(finding.tag or "")
-        mean = finding.numbers.get("mean")
-        if finding.code is not FindingCode.OUT_OF_RANGE or tag is None or mean is None:
-            continue
-        if tag.quantity != "temperature" or tag.believable is None or abs(tag.offset - _KELVIN) > 1e-9:
-            continue
-        low, high = tag.believable
-        usual = finding.numbers.get("usual", np.nan)
-        as_kelvin = mean - _KELVIN
-        if low <= as_kelvin <= high and abs(as_kelvin - usual) < 0.2 * (high - low):
-            suspected.append(
-                replace(
-                    finding,
-                    code=FindingCode.UNIT_SUSPECTED,
-                    numbers={**finding.numbers, "as_kelvin_K": as_kelvin},
-                    words={**finding.words, "unit": "K", "declared": tag.unit},
-                    suspects=(tag.name,),
-                )
-            )
-    return suspected
 
 
 def _worked(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from auditor.plant_file.ceiling_premises import check_premises
 from auditor.plant_file.faults import FaultBook, choices
 from auditor.plant_file.key_lines import KeyPath
 from auditor.plant_file.machine_parts import (
@@ -257,6 +258,7 @@ def _ceiling(
     _check_reservoir(ceiling.source, (Role.HEAT_IN,), part, declared, ((*place, "source"), book))
     for sink in ceiling.sink or ():
         _check_reservoir(sink, sinks, part, declared, ((*place, "sink"), book))
+    check_premises(ceiling, part, place, book)
     return Ceiling(CeilingKind(ceiling.kind), ceiling.source, ceiling.sink)
 
 

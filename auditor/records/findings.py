@@ -34,7 +34,6 @@ class FindingCode(StrEnum):
     HEATING_VALUE_CHANGED = "heating value changed"
     CREEP_AT_STANDSTILL = "creep at standstill"
     WITHHELD_FIGURE = "figure withheld"
-    TWO_METERS_DIFFER = "two meters differ"
 
 
 _NO_NUMBERS: Mapping[str, float] = MappingProxyType({})

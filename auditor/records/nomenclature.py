@@ -203,13 +203,6 @@ _RATIOS = (
         "The warmed stream's hottest above the warming stream's hottest, or coldest below coldest, whichever is more.",
         "positive: crossed, which no exchanger can do",
     ),
-    Term(
-        "crossing_K",
-        "temperature",
-        "temperature crossing",
-        "How far a stream leaves an exchanger beyond the other stream's inlet: colder than the coldest, or hotter than the hottest.",
-        "positive: heat would flow from cold to hot",
-    ),
 )
 
 

@@ -51,11 +51,8 @@ class Reason(StrEnum):
     TEMPERATURE_CROSSING = "temperatures cross beyond U"
     ABOVE_BAND = "above the believable band"
     BELOW_BAND = "below the believable band"
-    STORAGE_UNMEASURED = "unmeasured storage could exceed U/2"
     NO_CEILING_TEMPERATURES = "source not hotter than sink"
     NO_CEILING_FOR_KIND = "no ceiling for this kind"
-    CEILING_PREMISES_BROKEN = "premises of the ceiling do not hold"
-    FIRST_LAW_HIGHER = "work and heat above the higher heating value beyond U"
     FUEL_EXERGY = "work above the fuel's exergy beyond U"
 
 
