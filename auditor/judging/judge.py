@@ -93,8 +93,20 @@ def judge(
         findings += open_balance(machine, balance, powers.grid)
         findings += steps_in_figures(machine, balance, judgement)
         findings += withheld_figures(machine, balance)
-    ordered = tuple(sorted(findings, key=_rank))
+    ordered = tuple(sorted(_said_once(findings), key=_rank))
     return Judged(judgements, ordered, _worked(balances, judgements), _status(balances, judgements, ordered))
+
+
+def _said_once(findings: list[Finding]) -> list[Finding]:
+    """Leave out a gap of a tag that is only the trace of its counter's reset, which is told already."""
+    resets = {
+        (finding.tag, finding.start_us) for finding in findings if finding.code is FindingCode.COUNTER_RESET
+    }
+    return [
+        finding
+        for finding in findings
+        if finding.code is not FindingCode.GAP or (finding.tag, finding.start_us) not in resets
+    ]
 
 
 def _rank(finding: Finding) -> tuple[int, float, int, str]:

@@ -1,0 +1,30 @@
+"""What becomes of cells and seconds: the words of the two ledgers."""
+
+from __future__ import annotations
+
+from auditor.records.samples import Disposition
+from auditor.records.ticks import SecondKind
+
+DISPOSITIONS: dict[Disposition, str] = {
+    Disposition.USED: "entered the means that every figure is made of",
+    Disposition.EMPTY: "nothing stood in the cell",
+    Disposition.STATUS_WORD: "a word stood in place of a number; kept verbatim below",
+    Disposition.SENTINEL: "a number that the plant file says means no value",
+    Disposition.OUT_OF_RANGE: "outside the believable range of the plant file",
+    Disposition.SPIKE: "a single reading far from both of its neighbours",
+    Disposition.FROZEN: "the tag stood still for longer than the plant file believes",
+    Disposition.DUPLICATE: "the same value with the same stamp had been read already",
+    Disposition.CONFLICT_LOST: "another value with the same stamp took precedence",
+    Disposition.UNPARSEABLE: "neither a number nor a known word",
+    Disposition.BAD_STAMP: "the line has no stamp that could be read or placed",
+    Disposition.DISTRUSTED: "excluded by a person in the plant file",
+    Disposition.OUTSIDE_PERIOD: "before or after the period of this statement",
+    Disposition.CARRIED_IN: "before the period, but still holding when it began",
+}
+
+SECONDS: dict[SecondKind, str] = {
+    SecondKind.COVERED: "a reading stood behind it",
+    SecondKind.STALE: "the last reading was older than the plant file lets it hold",
+    SecondKind.REJECTED: "logged, but the reading was rejected",
+    SecondKind.NEVER_LOGGED: "before the first or after the last reading of the tag",
+}
