@@ -7,6 +7,7 @@ command is known, so that ``--help`` is quick.
 from __future__ import annotations
 
 import argparse
+import io
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -103,6 +104,10 @@ def _add_nightly(commands: argparse._SubParsersAction[argparse.ArgumentParser]) 
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run one command and return its exit code."""
+    for stream in (sys.stdout, sys.stderr):
+        # A pipe or an old locale may know only ASCII; our texts hold plus-minus signs and no-break spaces.
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(encoding="utf-8", errors="backslashreplace")
     options = _parser().parse_args(arguments)
     module_name, _, function_name = options.run.partition(":")
     import importlib

@@ -21,7 +21,7 @@ from auditor.records.result import AuditResult
 from auditor.report.statement import statement
 from auditor.report.terminal import audit_summary, check_json, check_text
 from auditor.resources import folder as shipped_folder
-from auditor.site_folder import AUDIT, LOGS, append_run_log, locked
+from auditor.site_folder import AUDIT, LOGS, append_run_log, locked, require_site
 
 
 def _out(text: str) -> None:
@@ -44,7 +44,7 @@ def run_audit(options: argparse.Namespace) -> int:
     start, end = _date(options.start, "--from"), _date(options.end, "--to")
     site: Path = options.site
     target: Path = options.out if options.out is not None else site / AUDIT
-    _require_site(site)
+    require_site(site)
     with locked(target), shown_progress(quiet=options.quiet) as progress:
         opened = open_site(site)
         result = audit_opened(opened, month=options.month, start=start, end=end, progress=progress)
@@ -52,20 +52,6 @@ def run_audit(options: argparse.Namespace) -> int:
         report = _published(result, opened, options.out)
     _tell(result, report, as_json=options.json)
     return int(result.status)
-
-
-def _require_site(site: Path) -> None:
-    """Refuse a folder that is no site before any output folder is made in it."""
-    if not (site / "plant.toml").is_file():
-        raise UsageError(
-            [
-                Fault(
-                    str(site),
-                    "there is no plant.toml in this folder",
-                    "name the folder that holds plant.toml and logs/",
-                )
-            ]
-        )
 
 
 def _published(result: AuditResult, opened: OpenedSite, out: Path | None) -> Path:

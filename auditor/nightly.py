@@ -22,13 +22,14 @@ from auditor.audit_run import (
 )
 from auditor.history import read_past
 from auditor.log_reading import hash_files
-from auditor.publishing import publish_month
-from auditor.records.errors import AuditorError, Exit, NoDataError, worst
+from auditor.publishing import publish_index, publish_month
+from auditor.records.errors import AuditorError, Exit, Fault, NoDataError, worst
 from auditor.records.period import Period
 from auditor.records.plant import Fuel, Plant
-from auditor.site_folder import AUDIT, LOGS, append_run_log, locked
+from auditor.site_folder import AUDIT, LOGS, append_run_log, locked, require_site
 
-_DAY_US = 86_400_000_000
+_SHORTEST_DAY_US = 23 * 3_600_000_000
+"""Less than this between first and last stamp is no day of logs, not even of the spring clock change."""
 _WITH_REPORT = ("published", "unchanged")
 
 Say = Callable[[str], None]
@@ -73,6 +74,7 @@ def nightly(sites: Iterable[Path], say: Say) -> list[SiteRun]:
 def _one_site(site: Path, say: Say) -> SiteRun:
     name = site.name
     try:
+        require_site(site)
         with locked(site / AUDIT):
             months = _changed_months(site, say)
             append_run_log(
@@ -101,7 +103,7 @@ def _log_line(run: MonthRun) -> str:
 
 
 def _log_failure(site: Path, line: str) -> None:
-    if not site.is_dir():
+    if not (site / "plant.toml").is_file():
         return
     try:
         append_run_log(site / AUDIT, [line.replace("\n", " | ")])
@@ -118,10 +120,10 @@ def _changed_months(site: Path, say: Say) -> list[MonthRun]:
     runs = []
     labels = months_of(opened)
     if not labels:
-        raise no_months(folder)
+        raise _no_months(folder)
     for label in labels:
         period = month_period(opened, label)
-        if logged_us(opened, period) < _DAY_US:
+        if logged_us(opened, period) < _SHORTEST_DAY_US:
             runs.append(MonthRun(site.name, label, "less than a day of logs", Exit.NO_DATA))
             say(f"{site.name} {label}: less than a day of logs, left alone")
             continue
@@ -144,13 +146,12 @@ def _changed_months(site: Path, say: Say) -> list[MonthRun]:
         publish_month(result, folder / AUDIT, key)
         runs.append(MonthRun(site.name, label, "published", result.status))
         say(f"{site.name} {label}: published, exit {int(result.status)}")
+    publish_index(opened.plant.site.name, folder / AUDIT)
     return runs
 
 
-def no_months(folder: Path) -> NoDataError:
+def _no_months(folder: Path) -> NoDataError:
     """Return the error for exports in which no stamp was recognised."""
-    from auditor.records.errors import Fault
-
     return NoDataError(
         [
             Fault(

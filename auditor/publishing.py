@@ -36,26 +36,25 @@ def publish(result: AuditResult, folder: Path) -> dict[str, str]:
     return {name: hashlib.sha256(content).hexdigest() for name, content in outputs.items()}
 
 
-def publish_month(result: AuditResult, audit_folder: Path, content_key: str) -> bool:
-    """Publish a calendar month below a site's audit folder, and append it to the history last.
-
-    Returns
-    -------
-    bool
-        True if the history grew: the month is new or changed.
-    """
-    digests = publish(result, audit_folder / result.period.label)
-    entry = PastAudit(
-        month=result.period.label,
-        content_key=content_key,
-        version=result.version,
-        exit_code=int(result.status),
-        outputs=digests,
-        statement=statement(result),
-    )
+def publish_index(site_name: str, audit_folder: Path) -> None:
+    """Write index.html from the history, where there is one."""
     past = read_past(audit_folder)
-    grew = past.get(entry.month) != entry
-    months = {**past, entry.month: entry}
-    write_outputs(audit_folder, {INDEX: render_index(result.plant.site.name, months.values()).encode()})
-    append(audit_folder, entry)
-    return grew
+    if past:
+        write_outputs(audit_folder, {INDEX: render_index(site_name, past.values()).encode()})
+
+
+def publish_month(result: AuditResult, audit_folder: Path, content_key: str) -> None:
+    """Publish a calendar month below a site's audit folder: its outputs, its history entry, the index."""
+    digests = publish(result, audit_folder / result.period.label)
+    append(
+        audit_folder,
+        PastAudit(
+            month=result.period.label,
+            content_key=content_key,
+            version=result.version,
+            exit_code=int(result.status),
+            outputs=digests,
+            statement=statement(result),
+        ),
+    )
+    publish_index(result.plant.site.name, audit_folder)

@@ -12,12 +12,32 @@ from collections.abc import Iterator, Mapping
 from datetime import UTC, datetime
 from pathlib import Path
 
-from auditor.records.errors import Fault, InputOutputError
+from auditor.records.errors import Fault, InputOutputError, UsageError
 
 LOGS = "logs"
 AUDIT = "audit"
 RUN_LOG = "run.log"
 _TEMPORARY = ".writing-"
+
+
+def require_site(site: Path) -> None:
+    """Refuse a folder that is no site, before anything is made in it.
+
+    Raises
+    ------
+    UsageError
+        If it holds no ``plant.toml``.
+    """
+    if not (site / "plant.toml").is_file():
+        raise UsageError(
+            [
+                Fault(
+                    str(site),
+                    "there is no plant.toml in this folder",
+                    "name the folder that holds plant.toml and logs/",
+                )
+            ]
+        )
 
 
 @contextlib.contextmanager

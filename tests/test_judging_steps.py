@@ -42,6 +42,16 @@ def test_a_ramp_is_no_step() -> None:
     assert largest_steps(TIMES_US, values) == []
 
 
+def test_the_weather_of_every_day_is_no_step() -> None:
+    """A daily swing of 10 % about a level that shifts by 4 % with a warm spell is weather."""
+    values = month(np.random.default_rng(11))
+    hour = np.arange(TIMES_US.size) % 96 / 4.0
+    values *= 1.0 - 0.05 * np.cos(2.0 * np.pi * (hour - 15.0) / 24.0)
+    days = np.arange(TIMES_US.size) / 96.0
+    values *= 1.0 - 0.04 * np.clip((days - 10.0) / 1.5, 0.0, 1.0)
+    assert largest_steps(TIMES_US, values) == []
+
+
 @pytest.mark.parametrize("seed", range(10))
 def test_clean_months_have_no_step(seed: int) -> None:
     """Noise and a daily cycle alone raise no finding."""

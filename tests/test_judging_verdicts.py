@@ -139,11 +139,15 @@ def test_a_gas_engine_at_42_percent_is_credible_against_fuel_exergy() -> None:
 
 
 def test_without_temperatures_there_is_no_ceiling() -> None:
-    """Source no hotter than the sink: no ceiling, never zero or infinite."""
+    """Source no hotter than the sink, or a temperature unknown: no ceiling, never zero or infinite."""
     values = {"gross": 0.2, "ceiling": np.nan, "margin": np.nan, "heat_in_W": 4e6}
     word, reasons = verdict_of(engine(), balance(values, {}))
     assert word is Verdict.NO_CEILING
-    assert Reason.NO_CEILING_TEMPERATURES in reasons
+    assert reasons == (Reason.MISSING_INPUT.value,)
+    alike = values | {"source_temperature_K": 298.15, "sink_temperature_K": 298.15}
+    word, reasons = verdict_of(engine(), balance(alike, {}))
+    assert word is Verdict.NO_CEILING
+    assert reasons == (Reason.NO_CEILING_TEMPERATURES.value,)
 
 
 def test_an_exchanger_is_tested_by_crossing_and_first_law() -> None:

@@ -194,8 +194,12 @@ def _interval_figures(
         valid = bottom[place] > 0.0
         if row.recipe.is_power:
             # Standstill of a part must not pass for zero where the running part is not known.
-            live_s = steps.by_interval(sums.masks[row.interval_mask].running_seconds)
+            mask = sums.masks[row.interval_mask]
+            live_s = steps.by_interval(mask.running_seconds)
             valid = valid & ((live_s > 0.0) | stands_still)
+            # Nor may a mean over a few of the ticks that the interval's coverage tells of.
+            own_share = steps.by_interval(mask.seconds) / length_s
+            valid = valid & (own_share >= rules.interval_coverage * coverage)
         else:
             own_s = steps.by_interval(sums.masks[row.period_mask].seconds)
             valid = valid & (own_s / length_s >= rules.interval_coverage)

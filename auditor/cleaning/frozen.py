@@ -89,6 +89,10 @@ def _take_out(
         tested_us += origin - run.start_us
     if tested_us < round((tally.tag.frozen_after_s or 0.0) * MICROSECONDS):
         return ()
+    if tally.tag.between in ("line", "step"):
+        # Until the first live sample its place is held, or led up to, by a frozen one.
+        live = np.flatnonzero(sums.samples[ticks.stop :] > 0)
+        ticks = slice(ticks.start, ticks.stop + (int(live[0]) if live.size else 0))
     ticks = slice(ticks.start + int(np.argmax(running[ticks])), ticks.stop)
     covered_us = int(sums.covered_us[ticks].sum())
     cells = int(sums.samples[ticks].sum())

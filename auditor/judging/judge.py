@@ -82,7 +82,7 @@ def judge(
     earlier : iterable of Finding
         Findings of reading, cleaning and metering.
     """
-    findings = [_sized(finding, powers) for finding in earlier]
+    findings = [_sized(finding, powers, ticks) for finding in earlier]
     findings += unit_suspects(findings, ticks, settings.tags)
     judgements: dict[str, MachineJudgement] = {}
     for name, balance in balances.items():
@@ -118,10 +118,11 @@ def _rank(finding: Finding) -> tuple[int, float, int, str]:
     return tier, -energy, finding.start_us or 0, where
 
 
-def _sized(finding: Finding, powers: PowerTable) -> Finding:
+def _sized(finding: Finding, powers: PowerTable, ticks: TickTable) -> Finding:
     """Give a finding about a tag the energy that its streams carry in that time, where it has none yet.
 
-    The energy is the mean running power of the largest stream that the tag feeds, times the stretch.
+    The energy is the mean running power of the largest stream that the tag feeds, times the stretch; of
+    scattered cells no more than their number times the usual time between two.
     """
     if finding.energy_J is not None or finding.start_us is None or finding.end_us is None:
         return finding
@@ -137,7 +138,11 @@ def _sized(finding: Finding, powers: PowerTable) -> Finding:
             largest_W = max(largest_W, abs(float(powers.power_W[running, index].mean())))
     if largest_W == 0.0:
         return finding
-    return replace(finding, energy_J=largest_W * (finding.end_us - finding.start_us) / 1e6)
+    touched_s = (finding.end_us - finding.start_us) / 1e6
+    if finding.tag in ticks.tags and "count" in finding.numbers:
+        step_s = float(ticks.native_step_s[ticks.tags.index(finding.tag)])
+        touched_s = min(touched_s, np.nan_to_num(finding.numbers["count"] * step_s, nan=touched_s))
+    return replace(finding, energy_J=float(largest_W * touched_s))
 
 
 def _worked(

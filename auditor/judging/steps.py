@@ -18,12 +18,15 @@ if TYPE_CHECKING:
     from auditor.records.result import MachineJudgement
 
 _FIGURES = ("gross", "heat")
-_SIDE_US = 60 * 3_600_000_000
-"""Length of record compared on each side of a candidate: two and a half days."""
+_SIDE_US = 48 * 3_600_000_000
+"""Length of record compared on each side of a candidate: whole days, so that each side has every hour."""
 _NEAR_US = 6 * 3_600_000_000
 """Within this time of the best candidate a step is dated."""
 _AT_ONCE_US = 5_400_000_000
-"""The last and the first hour and a half on either side must show it too: weather and ramps do not."""
+"""The hour and a half on either side must show it too: ramps do not."""
+_DAY_US = 86_400_000_000
+_OTHER_DAYS = (-3, -2, -1, 1, 2, 3)
+"""Days on which the same time of the day is looked at, to know what is usual then."""
 _LEAST_INTERVALS = 60
 """Fewest intervals on each side."""
 _LEAST_RELATIVE = 0.025
@@ -81,11 +84,14 @@ def steps_in_figures(machine: Machine, balance: MachineBalance, judgement: Machi
 def largest_steps(times_us: NDArray[np.int64], values: NDArray[np.float64], at_most: int = 3) -> list[Step]:
     """Pick the clearest steps of a series, none within the compared record of another.
 
-    For each candidate the medians of the two and a half days before and after are compared; their
-    difference over the robust scatter of both sides is the score. A step must also be seen between
-    the six hours on either side of it (a slow ramp is not), and must be 2.5 % of the level at least.
+    For each candidate the medians of the two days before and after are compared; their
+    difference over the robust scatter of both sides is the score. A step must also be seen between the
+    hour and a half on either side of it, beyond what is usual at that time of the day (a ramp or the
+    sunrise is none), and must be 2.5 % of the level at least.
     """
-    candidates = [step for index in _candidates(times_us) if (step := _step_at(times_us, values, index))]
+    candidates = [
+        step for index in _candidates(times_us, values) if (step := _step_at(times_us, values, index))
+    ]
     chosen: list[Step] = []
     for step in sorted(candidates, key=lambda candidate: -candidate.score):
         at_us = times_us[step.index]
@@ -96,9 +102,23 @@ def largest_steps(times_us: NDArray[np.int64], values: NDArray[np.float64], at_m
     return sorted(chosen, key=lambda step: step.index)
 
 
-def _candidates(times_us: NDArray[np.int64]) -> range:
-    """Every fourth point is tried; the step is dated to its very point afterwards."""
-    return range(_LEAST_INTERVALS, times_us.size - _LEAST_INTERVALS, 4)
+def _candidates(times_us: NDArray[np.int64], values: NDArray[np.float64]) -> list[int]:
+    """Points at which means, which are quick, already show half of the smallest step, slowly and at once."""
+    sums = np.concatenate(([0.0], np.cumsum(values)))
+    place = np.arange(values.size)
+
+    def change(side_us: int) -> NDArray[np.float64]:
+        first = np.searchsorted(times_us, times_us - side_us)
+        last = np.searchsorted(times_us, times_us + side_us)
+        before = (sums[place] - sums[first]) / np.maximum(place - first, 1)
+        after = (sums[last] - sums[place]) / np.maximum(last - place, 1)
+        size: NDArray[np.float64] = np.abs(after - before)
+        return size
+
+    least = 0.5 * _LEAST_RELATIVE * np.abs(values)
+    shown = (change(_SIDE_US) > least) & (change(_AT_ONCE_US) > least)
+    inside = (place >= _LEAST_INTERVALS) & (place < values.size - _LEAST_INTERVALS)
+    return [int(index) for index in np.flatnonzero(shown & inside)]
 
 
 def _step_at(times_us: NDArray[np.int64], values: NDArray[np.float64], index: int) -> Step | None:
@@ -132,13 +152,23 @@ def _dated(times_us: NDArray[np.int64], values: NDArray[np.float64], step: Step)
 
 
 def _sudden(times_us: NDArray[np.int64], values: NDArray[np.float64], index: int, height: float) -> bool:
-    at_us = times_us[index]
-    near_left = values[int(np.searchsorted(times_us, at_us - _AT_ONCE_US)) : index]
-    near_right = values[index : int(np.searchsorted(times_us, at_us + _AT_ONCE_US))]
-    if near_left.size < 4 or near_right.size < 4:
+    """Whether the change happens at once, and not only as it does at this time of every day."""
+    at_us = int(times_us[index])
+    here = _at_once(times_us, values, at_us)
+    if not np.isfinite(here):
         return False
-    near = float(np.median(near_right) - np.median(near_left))
-    return near * height > 0.0 and abs(near) > 0.6 * abs(height)
+    other_days = np.array([_at_once(times_us, values, at_us + days * _DAY_US) for days in _OTHER_DAYS])
+    known = other_days[np.isfinite(other_days)]
+    beyond_usual = here - (float(np.median(known)) if known.size else 0.0)
+    return beyond_usual * height > 0.0 and abs(beyond_usual) > 0.6 * abs(height)
+
+
+def _at_once(times_us: NDArray[np.int64], values: NDArray[np.float64], at_us: int) -> float:
+    """Median of the hour and a half from a moment on, less that of the hour and a half before it."""
+    first, middle, last = np.searchsorted(times_us, (at_us - _AT_ONCE_US, at_us, at_us + _AT_ONCE_US))
+    if middle - first < 4 or last - middle < 4:
+        return float("nan")
+    return float(np.median(values[middle:last]) - np.median(values[first:middle]))
 
 
 def _input_change_J(

@@ -30,6 +30,8 @@ class _Evidence:
     unproven: NDArray[np.bool_]
     implausible: NDArray[np.bool_]
     no_ceiling: NDArray[np.bool_]
+    ceiling_unknown: NDArray[np.bool_]
+    """No ceiling because a temperature or the fuel it stands on is not known."""
     flags: tuple[tuple[Reason, NDArray[np.bool_]], ...]
 
 
@@ -77,7 +79,8 @@ def judge_machine(machine: Machine, balance: MachineBalance, interval_coverage: 
         [np.int8(word) for _, word in choices],
         default=np.int8(Verdict.CREDIBLE),
     ).astype(np.int8)
-    flags = ((Reason.MISSING_INPUT, missing), (Reason.NEGATIVE_INPUT, negative), *evidence.flags)
+    lacking = missing | (evidence.ceiling_unknown & ~stopped)
+    flags = ((Reason.MISSING_INPUT, lacking), (Reason.NEGATIVE_INPUT, negative), *evidence.flags)
     return MachineJudgement(
         machine=machine.name,
         verdict=verdict,
@@ -103,12 +106,15 @@ def _physics(machine: Machine, balance: MachineBalance) -> _Evidence:
     ceiling_reason = Reason.FUEL_EXERGY if KINDS[machine.kind].burns_fuel else Reason.OVER_CEILING
     gives_work = machine.ceiling is not None
     undefined = ~np.isfinite(value("ceiling", shape)) if gives_work else np.zeros(shape.shape, dtype=bool)
+    hot_K, cold_K = value("source_temperature_K", shape), value("sink_temperature_K", shape)
+    not_hotter = undefined & np.isfinite(hot_K) & np.isfinite(cold_K)
     without = np.full(shape.shape, not gives_work)
     return _Evidence(
         impossible=over | more_out | falls | crossing,
         unproven=within,
         implausible=above | below,
         no_ceiling=undefined | without,
+        ceiling_unknown=undefined & ~not_hotter,
         flags=(
             (ceiling_reason, over),
             (Reason.OVER_CEILING_WITHIN_U, within),
@@ -117,7 +123,7 @@ def _physics(machine: Machine, balance: MachineBalance) -> _Evidence:
             (Reason.TEMPERATURE_CROSSING, crossing),
             (Reason.ABOVE_BAND, above),
             (Reason.BELOW_BAND, below),
-            (Reason.NO_CEILING_TEMPERATURES, undefined & balance.interval.assessed),
+            (Reason.NO_CEILING_TEMPERATURES, not_hotter),
             (Reason.NO_CEILING_FOR_KIND, without),
         ),
     )

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import gzip
 import hashlib
+import os
 import re
 import zipfile
 import zlib
@@ -57,6 +58,12 @@ class Claim:
     pattern: int
 
 
+_EMPTY = "empty file"
+_UNFINISHED_COPY = "unfinished copy"
+_COME_BACK = (_EMPTY, _UNFINISHED_COPY)
+"""Reasons to set a file aside that will pass: the next run reads it."""
+
+
 @dataclass(frozen=True)
 class Listing:
     """Every file below ``logs/``, sorted by path, in one of three places."""
@@ -64,7 +71,7 @@ class Listing:
     claims: tuple[Claim, ...]
     unclaimed: tuple[StoredFile, ...]
     unreadable: tuple[tuple[Claim, str], ...]
-    """Claimed archives that do not open, with the reason."""
+    """Claimed files that cannot be read, or not yet, with the reason."""
 
 
 def list_logs(logs: Path, exports: Mapping[str, Export]) -> Listing:
@@ -95,7 +102,9 @@ def list_logs(logs: Path, exports: Mapping[str, Export]) -> Listing:
         for member in members:
             found = by_path or _claimants(member.path, patterns)
             owners = list(dict.fromkeys(name for name, _ in found))
-            if member.set_aside or not owners:
+            if owners and member.set_aside in _COME_BACK:
+                unreadable.append((Claim(member, *found[0]), member.set_aside))
+            elif member.set_aside or not owners:
                 unclaimed.append(member)
             elif len(owners) > 1:
                 faults.append(_two_owners(member, owners))
@@ -159,11 +168,16 @@ def _walk(logs: Path) -> Iterator[StoredFile]:
     for path in logs.rglob("*"):
         try:
             if path.is_file():
-                found.append((path.relative_to(logs).as_posix(), path, path.stat().st_size))
+                found.append((_printable(path.relative_to(logs)), path, path.stat().st_size))
         except OSError:  # vanished between listing and looking: the next run sees the folder anew
             continue
     for name, path, size in sorted(found):
         yield StoredFile(name, path, None, size, _set_aside(name, size))
+
+
+def _printable(path: Path) -> str:
+    """Path with ``/``; bytes of a name that are no UTF-8 are written out, so that any output can hold it."""
+    return os.fsencode(path.as_posix()).decode("utf-8", "backslashreplace")
 
 
 def _set_aside(path: str, size: int) -> str:
@@ -173,8 +187,8 @@ def _set_aside(path: str, size: int) -> str:
     if name.startswith("~$"):
         return "lock file of an office program"
     if name.lower().endswith(_UNFINISHED):
-        return "unfinished copy"
-    return "" if size else "empty file"
+        return _UNFINISHED_COPY
+    return "" if size else _EMPTY
 
 
 def _members(stored: StoredFile) -> tuple[StoredFile, ...]:

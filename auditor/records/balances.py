@@ -20,8 +20,10 @@ class IntervalFigures:
     Powers are means over those ticks of the interval that are common to all inputs of the headline figure
     (known standstill counts, with zero); where there is no such tick, over the ticks known to the figure
     itself. Where none of them runs although the machine does, the power is not known: standstill of a part
-    does not pass for zero. Ratios are sums over sums, over all ticks known to the figure, and NaN where
-    these cover less of the interval than the rule asks. A figure that the machine cannot have has no key.
+    does not pass for zero. A power that knows fewer of these ticks than the rule's share is NaN.
+
+    Ratios are sums over sums, over all ticks known to the figure, and NaN where these cover less of the
+    interval than the rule asks. A figure that the machine cannot have has no key.
     """
 
     start_us: NDArray[np.int64]
