@@ -246,19 +246,23 @@ class _Pool:
             dict.fromkeys([name for look in self.looks for name in look.dialect.headings] + self.fields)
         )
         names, where = headings, f"exports.{export.name}"
-        wanted = [(f"exports.{export.name}.stamp_columns", name) for name in export.stamp_columns]
+        wanted = [(f"exports.{export.name}.stamp_columns", name, 0) for name in export.stamp_columns]
         if export.layout is not None:
             keys = ("stamp", "tag", "value")
-            wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key)) for key in keys]
+            wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key), 0) for key in keys]
         else:
-            wanted += [(f"{where}.tags.{name}.column", tag.column) for name, tag in self.tags.items()]
+            wanted += [
+                (f"{where}.tags.{name}.column", tag.column, tag.line) for name, tag in self.tags.items()
+            ]
         faults = [
-            _no_heading(key, name, names, self) for key, name in wanted if heading_key(name) not in headings
+            _no_heading((line, key), name, names, self)
+            for key, name, line in wanted
+            if heading_key(name) not in headings
         ]
         if export.layout is not None and self.looks and all(look.is_whole for look in self.looks):
             points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
             faults += [
-                _no_heading(f"{where}.tags.{name}.column", tag.column, points, self)
+                _no_heading((tag.line, f"{where}.tags.{name}.column"), tag.column, points, self)
                 for name, tag in self.tags.items()
                 if heading_key(tag.column) not in points
             ]
@@ -294,12 +298,13 @@ class _Pool:
         return faults
 
 
-def _no_heading(key: str, name: str, names: Sequence[str], pool: _Pool) -> Fault:
+def _no_heading(place: tuple[int, str], name: str, names: Sequence[str], pool: _Pool) -> Fault:
+    line, key = place
     near = difflib.get_close_matches(heading_key(name), list(names), 3, 0.5)
     files = len(pool.looks) + len(pool.unopened)
     nearest = "nearest: " + ", ".join(f'"{word}"' for word in near) if near else "there is none like it"
     return Fault(
-        f"plant.toml, {key}",
+        f"plant.toml:{line}, {key}" if line else f"plant.toml, {key}",
         f'"{name}" is in none of the {files} files of export {pool.export.name}; {nearest}',
         "write the name exactly as it stands in the export, or correct the export's files",
     )
