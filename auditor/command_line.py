@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import argparse
 import io
+import os
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -116,12 +117,15 @@ def main(arguments: Sequence[str] | None = None) -> int:
     from auditor.records.errors import AuditorError, Exit
 
     try:
-        return int(run(options))
+        code = int(run(options))
+        sys.stdout.flush()
+        return code
     except AuditorError as error:
         sys.stderr.write(f"{error}\n")
         return int(error.exit_code)
     except BrokenPipeError:
-        # Whoever read our standard output has gone; nothing is left to be told.
+        # Whoever read our standard output has gone; nothing is left to be told, not even at the end.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return int(Exit.INPUT_OUTPUT)
     except KeyboardInterrupt:
         sys.stderr.write("interrupted; earlier reports are whole\n")

@@ -8,7 +8,7 @@ from fractions import Fraction
 import numpy as np
 import pytest
 from cleaning_factory import Cell, Row, Setting, cells, longer, make_tag, run, seconds, series
-from hypothesis import given, settings
+from hypothesis import example, given
 from hypothesis import strategies as st
 
 from auditor.records.plant import Tag
@@ -113,7 +113,6 @@ def slow_second(
 
 
 @pytest.mark.parametrize("rule", ["step", "line", "mean end", "mean start", "amount end"])
-@settings(max_examples=50, deadline=None)
 @given(rows=tables, where=cuts, distrust=st.booleans())
 def test_means_and_seconds_agree_with_a_slow_reading(
     rule: str, rows: list[tuple[int, Cell]], where: list[int], distrust: bool
@@ -138,12 +137,17 @@ def test_means_and_seconds_agree_with_a_slow_reading(
 
 
 @pytest.mark.parametrize("rule", RULES)
-@settings(max_examples=50, deadline=None)
 @given(
     rows=st.lists(st.tuples(stamps, raw_cells, st.integers(0, 1)), max_size=40),
     where=cuts,
     repeat=st.sampled_from(["keep first", "keep later", "reject both"]),
     distrust=st.booleans(),
+)
+@example(  # a spike of a counter just before a cut once changed the smallest rise that was met after it
+    rows=[(0, 1.0, 0), (1, 0.0, 0), (2, 2.0, 0), (241, 1.0, 0), (242, 0.0, 0), (243, 0.0, 0)],
+    where=[4],
+    repeat="keep first",
+    distrust=False,
 )
 def test_ledgers_add_up_and_no_cut_changes_a_total(
     rule: str, rows: list[tuple[int, Cell, int]], where: list[int], repeat: str, distrust: bool
@@ -194,7 +198,6 @@ def test_a_bad_cell_of_one_tag_leaves_the_others_covered() -> None:
     assert table.covered_s[2].tolist() == [40.0, 60.0, 60.0]
 
 
-@settings(max_examples=50, deadline=None)
 @given(
     rows=st.lists(st.tuples(stamps, st.lists(raw_cells, min_size=4, max_size=4)), max_size=30),
     where=cuts,
@@ -243,7 +246,6 @@ def assert_halves_make_the_whole(setting: Setting, rows: list[tuple[int, Cell]])
 
 
 @pytest.mark.parametrize("rule", ["step", "line", "counter"])
-@settings(max_examples=50, deadline=None)
 @given(rows=tables)
 def test_two_halves_make_the_whole(rule: str, rows: list[tuple[int, Cell]]) -> None:
     """Wherever the samples lie, nothing is lost or counted twice at the edge between two periods."""
@@ -262,7 +264,6 @@ def test_two_halves_make_the_whole_of_means(rule: str, offset: int) -> None:
     assert_halves_make_the_whole(Setting([tag_of(rule)], hours=PERIOD_S / 3600), rows)
 
 
-@settings(max_examples=50, deadline=None)
 @given(
     rows=st.lists(
         st.tuples(st.integers(0, PERIOD_S), st.integers(0, 50).map(float)), min_size=2, max_size=30

@@ -43,7 +43,7 @@ LINES = st.one_of(
     st.lists(CELLS, max_size=6).map(";".join),
     st.sampled_from(["", "t;a;b", ";;", "end", "t;a;b;"]),
 )
-SETTINGS = settings(max_examples=50, deadline=None, suppress_health_check=list(HealthCheck), derandomize=True)
+SETTINGS = settings(suppress_health_check=list(HealthCheck))
 
 
 def read_bytes(content: bytes) -> Reading:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from auditor.cleaning.cells import Cells
-from auditor.cleaning.counters import CounterRule, Readings, sift
+from auditor.cleaning.counters import CounterRule, Readings, sift, smallest_rises
 from auditor.cleaning.spans import add_constant, add_covered, cut
 from auditor.records.period import MICROSECONDS
 from auditor.records.ticks import Bridge
@@ -48,7 +48,8 @@ class CounterSums:
         self.distrust_us = distrust_us
         self.waiting: Cells | None = None
         """The last reading that stands, then those not decided yet."""
-        self.quantum = np.inf
+        self._quanta = np.zeros(0)
+        """Smallest rise met up to each waiting reading: found on arrival, so that no cut can change it."""
         self.bridges: list[Bridge] = []
         self.resets: list[Reset] = []
         self.carried: list[Cells] = []
@@ -70,19 +71,25 @@ class CounterSums:
         """Take further readings, and settle those whose fate is known; None when there are none at all."""
         fresh = self.waiting is None
         if cells is not None and len(cells):
-            self.waiting = cells if self.waiting is None else self.waiting.followed_by(cells)
+            self._queue(cells)
         if self.waiting is None:
             return None
         waiting = self.waiting
-        sifted = sift(
-            Readings(waiting.instants_us, waiting.values, float(self.quantum)), self.rule, final=final
-        )
+        sifted = sift(Readings(waiting.instants_us, waiting.values, self._quanta), self.rule, final=final)
         kept = waiting.take(sifted.kept)
         self._fill(kept, sifted.amount)
-        self.quantum = sifted.quantum
         rest = np.concatenate((sifted.kept[-1:], np.arange(sifted.settled, len(waiting))))
-        self.waiting = waiting.take(rest)
+        self.waiting, self._quanta = waiting.take(rest), self._quanta[rest]
         return Settled(kept if fresh else kept.take(slice(1, None)), waiting.take(sifted.spikes))
+
+    def _queue(self, cells: Cells) -> None:
+        if self.waiting is None:
+            self._quanta = smallest_rises(np.nan, np.inf, cells.values)
+            self.waiting = cells
+            return
+        fresh = smallest_rises(float(self.waiting.values[-1]), float(self._quanta[-1]), cells.values)
+        self._quanta = np.concatenate((self._quanta, fresh))
+        self.waiting = self.waiting.followed_by(cells)
 
     def reject_rest(self) -> None:
         """At the end: stretches after the last reading are covered by nothing any more."""

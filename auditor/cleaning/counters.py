@@ -30,12 +30,13 @@ class CounterRule:
 
 @dataclass(frozen=True)
 class Readings:
-    """Readings in order of time, and the smallest rise met before the first of them."""
+    """Readings in order of time, each with the smallest rise met up to it."""
 
     instants_us: NDArray[np.int64]
     values: NDArray[np.float64]
-    quantum: float
-    """Infinite before the first rise."""
+    quanta: NDArray[np.float64]
+    """Smallest rise from any reading to the very next one so far, those taken out since included:
+    infinite before the first rise."""
 
 
 @dataclass(frozen=True)
@@ -50,8 +51,13 @@ class Sifted:
     """Single readings that are off while their neighbours agree."""
     settled: int
     """Readings before this index are decided; later ones need the readings that follow them."""
-    quantum: float
-    """Smallest rise met before the last kept reading."""
+
+
+def smallest_rises(before: float, quantum: float, values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Smallest rise met up to each of the readings that follow one of value ``before`` (NaN: none)."""
+    rises = np.diff(values, prepend=before)
+    smallest: NDArray[np.float64] = np.minimum.accumulate(np.where(rises > 0.0, rises, np.inf))
+    return np.minimum(smallest, quantum)
 
 
 def sift(readings: Readings, rule: CounterRule, *, final: bool) -> Sifted:
@@ -75,10 +81,7 @@ def sift(readings: Readings, rule: CounterRule, *, final: bool) -> Sifted:
         False while more readings may follow: then the last two are left open, as the fate of a reading
         depends on two after it. The loop runs over steps that are not believed, not over readings.
     """
-    rises = np.diff(readings.values)
-    positive = np.where(rises > 0.0, rises, np.inf)
-    quanta = np.minimum.accumulate(np.concatenate(([readings.quantum], positive)))
-    steps = _Steps(readings, quanta, rule)
+    steps = _Steps(readings, rule)
     count = readings.values.size
     settled = count if final else max(1, count - 2)
     found = [spike for spike in _spikes(steps) if spike < settled]
@@ -86,7 +89,7 @@ def sift(readings: Readings, rule: CounterRule, *, final: bool) -> Sifted:
     keep = np.ones(settled, dtype=np.bool_)
     keep[spikes] = False
     kept = np.flatnonzero(keep)
-    return Sifted(kept, steps.amounts(kept[:-1], kept[1:]), spikes, settled, float(quanta[kept[-1]]))
+    return Sifted(kept, steps.amounts(kept[:-1], kept[1:]), spikes, settled)
 
 
 def _spikes(steps: _Steps) -> list[int]:
@@ -118,9 +121,9 @@ def _spikes(steps: _Steps) -> list[int]:
 class _Steps:
     """Steps between readings, judged by the rule."""
 
-    def __init__(self, readings: Readings, quanta: NDArray[np.float64], rule: CounterRule) -> None:
-        self.times, self.values = readings.instants_us, readings.values
-        self.quanta, self.rule = quanta, rule
+    def __init__(self, readings: Readings, rule: CounterRule) -> None:
+        self.times, self.values, self.quanta = readings.instants_us, readings.values, readings.quanta
+        self.rule = rule
 
     def amounts(self, start: NDArray[np.intp], stop: NDArray[np.intp]) -> NDArray[np.float64]:
         """Return what was counted over each step; NaN where it is not believed."""
