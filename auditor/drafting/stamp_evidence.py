@@ -1,0 +1,136 @@
+"""What the stamps of an export prove, and what they only show."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from auditor.drafting.gathering import Gathered
+from auditor.drafting.proposals import StampEvidence
+from auditor.log_reading.stamps import NO_OFFSET, Stamps, read_stamps, shape_in_words, texts_of
+from auditor.records.plant import DateOrder
+
+_HOUR_US = 3_600_000_000
+_MINUTE_US = 60_000_000
+_EPOCH = "the stamps count from 1970 and so are UTC, unless the logger counts on a clock of its own"
+_MOST_SHOWN = 2
+_STRAYS = 0.01
+"""Torn lines may read as another order: so small a share of them does not count against a proof."""
+
+
+def stamp_evidence(gathered: Gathered) -> StampEvidence:
+    """Decide the order of the date where only one can be, and say what the stamps show of their clock."""
+    pieces = [piece for piece in (*gathered.pieces, *gathered.heads) if piece.lines]
+    texts = _joined([piece.stamps() for piece in pieces])
+    columns = [texts_of(column) for column in texts]
+    reads = {order: read_stamps(columns, order) for order in pieces[0].table.orders}
+    reads = {order: read for order, read in reads.items() if read.good.any()}
+    shown = [" ".join(parts).strip() for parts in zip(*texts, strict=True)]
+    order, because = _order(reads, shown)
+    likely = order or next(iter(reads))
+    read = reads[likely]
+    good = np.flatnonzero(read.good)
+    in_time = good[np.argsort(read.local_us[good], kind="stable")] if order else good
+    ends = np.cumsum([len(piece.lines) for piece in gathered.pieces])
+    runs = [rows[read.good[rows]] for rows in np.split(np.arange(ends[-1]), ends[:-1])]
+    steps = [np.diff(read.local_us[rows]) for rows in runs]
+    if likely.startswith("epoch"):
+        clock: tuple[str, ...] = (_EPOCH,)
+    else:
+        clock = _clock(read, shown, runs, steps)
+    return StampEvidence(
+        order=order,
+        because=because,
+        first=shown[int(in_time[0])],
+        last=shown[int(in_time[-1])],
+        clock=clock,
+        step_s=_step_s(steps),
+    )
+
+
+def _joined(stamps: Sequence[list[list[str]]]) -> list[list[str]]:
+    width = min(len(columns) for columns in stamps)
+    return [[text for columns in stamps for text in columns[place]] for place in range(width)]
+
+
+def _order(reads: dict[DateOrder, Stamps], shown: Sequence[str]) -> tuple[DateOrder | None, str]:
+    if len(reads) == 1:
+        order, read = next(iter(reads.items()))
+        text = shown[int(np.flatnonzero(read.good)[0])]
+        words = shape_in_words(text, order)
+        return order, f'"{text}" can only be read so' + (f": {words}" if words else "")
+    alone: dict[DateOrder, NDArray[np.int64]] = {}
+    for order, read in reads.items():
+        others = np.any([other.good for name, other in reads.items() if name != order], axis=0)
+        alone[order] = np.flatnonzero(read.good & ~others)
+    first = min(reads, key=lambda name: (-alone[name].size, name))
+    rest = sum(found.size for name, found in alone.items() if name != first)
+    if alone[first].size and rest <= _STRAYS * alone[first].size:
+        return first, f'"{shown[int(alone[first][0])]}" can only be read so'
+    at = int(np.flatnonzero(np.all([read.good for read in reads.values()], axis=0) | (rest > 0))[0])
+    readings = " or ".join(
+        f"{_date(int(read.local_us[at]))} ({name})" for name, read in reads.items() if read.good[at]
+    )
+    if rest:
+        return None, f"some stamps can only be read one way and some only another: is this one logger? {readings}"
+    return None, f'no day above 12 was seen, so "{shown[at]}" may be {readings}'
+
+
+def _date(local_us: int) -> str:
+    moment = np.datetime64(local_us, "us").item()
+    return f"{moment.day} {moment:%B %Y}"
+
+
+def _clock(
+    read: Stamps,
+    shown: Sequence[str],
+    runs: Sequence[NDArray[np.int64]],
+    steps: Sequence[NDArray[np.int64]],
+) -> tuple[str, ...]:
+    zoned = np.flatnonzero(read.good & (read.offset_us != NO_OFFSET))
+    if zoned.size:
+        whole = zoned.size == int(read.good.sum())
+        named = ", ".join(_offset(int(value)) for value in np.unique(read.offset_us[zoned]))
+        return (
+            f'{"every stamp names" if whole else "some stamps name"} an offset of its own: {named}'
+            f' ("{shown[int(zoned[0])]}")',
+        )
+    said = ["no stamp names an offset from UTC"]
+    for sign, what in ((-1, "falls back by an hour"), (1, "leaps an hour")):
+        found: dict[tuple[str, str], None] = {}
+        for rows, step in zip(runs, steps, strict=True):
+            for at in _hour_steps(read.local_us[rows], step, sign):
+                found[(shown[int(rows[at])], shown[int(rows[at + 1])])] = None
+        said += [f'the clock {what} from "{one}" to "{two}"' for one, two in list(found)[:_MOST_SHOWN]]
+    if len(said) == 1:
+        said.append("no repeated and no skipped hour was seen in the lines looked at")
+    return tuple(said)
+
+
+def _offset(offset_us: int) -> str:
+    minutes = offset_us // _MINUTE_US
+    sign = "-" if minutes < 0 else "+"
+    return "UTC" if minutes == 0 else f"{sign}{abs(minutes) // 60:02d}:{abs(minutes) % 60:02d}"
+
+
+def _hour_steps(
+    local_us: NDArray[np.int64], steps_us: NDArray[np.int64], sign: int
+) -> NDArray[np.int64]:
+    """Find rows after which the clock moves by an hour more or less, in the small hours of a Sunday."""
+    usual = float(np.median(steps_us)) if steps_us.size > 2 else 0.0
+    if not 0.0 < usual <= _HOUR_US / 2:
+        return np.zeros(0, np.int64)
+    small_hours = (local_us[:-1] // _HOUR_US) % 24 <= 3
+    # Days are counted from 1970-01-01, a Thursday; clocks change in the night to a Sunday.
+    sunday = (local_us[:-1] // (24 * _HOUR_US)) % 7 == 3
+    by_an_hour = np.abs(steps_us - sign * _HOUR_US - usual) <= 0.5 * usual
+    return np.flatnonzero(small_hours & sunday & by_an_hour)
+
+
+def _step_s(steps_us: Sequence[NDArray[np.int64]]) -> float:
+    apart = np.abs(np.concatenate(steps_us))
+    apart = apart[apart > 0]
+    return float(np.median(apart)) / 1e6 if apart.size else math.nan
