@@ -116,9 +116,13 @@ def decimal_mark(cells: Iterable[str], delimiter: str) -> tuple[Literal[".", ","
     mark, count = (".", counts["."]) if counts["."] >= counts[","] else (",", counts[","])
     other = counts["," if mark == "." else "."]
     if count and not other:
-        return (".", f'numbers such as "{proven["."][0]}"') if mark == "." else (
-            ",",
-            f'numbers such as "{proven[","][0]}"',
+        return (
+            (".", f'numbers such as "{proven["."][0]}"')
+            if mark == "."
+            else (
+                ",",
+                f'numbers such as "{proven[","][0]}"',
+            )
         )
     if count:
         return None, f'both marks were seen: "{proven["."][0]}" and "{proven[","][0]}"'
@@ -154,7 +158,9 @@ def unit_of(heading: str, rows: Iterable[tuple[str, str]]) -> UnitFound:
         if found is None:
             return UnitFound("", "", "", "nothing in the export names it")
         # One letter in round brackets is as often a phase or a place as a unit.
-        if (found["open"] == "(" and len(found["unit"]) == 1 and found["unit"] != "%") or found["unit"].isdigit():
+        if (found["open"] == "(" and len(found["unit"]) == 1 and found["unit"] != "%") or found[
+            "unit"
+        ].isdigit():
             return UnitFound("", "", "", f'is the "{found["unit"]}" in brackets its unit?')
         written = [(found["unit"], "in brackets in the heading")]
     read = {_unit(text)[:2] for text, _ in written}

@@ -141,7 +141,8 @@ def _read(
     rows: Sequence[Sequence[str]], stamp: tuple[int, ...], orders: Sequence[DateOrder]
 ) -> NDArray[np.bool_]:
     columns = [texts_of([row[place] if place < len(row) else "" for row in rows]) for place in stamp]
-    return np.any([read_stamps(columns, order).good for order in orders], axis=0)
+    good = [read_stamps(columns, order).good for order in orders]
+    return np.asarray(np.any(good, axis=0), np.bool_)
 
 
 def _is_dates_only(rows: Sequence[Sequence[str]], place: int) -> bool:

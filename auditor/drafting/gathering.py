@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -67,7 +68,7 @@ class Gathered:
         texts: dict[str, list[str]] = {}
         pieces: dict[str, list[int]] = {}
         for number, piece in enumerate(self.pieces):
-            rows = [row for row in piece.rows(every) if len(row) >= len(piece.table.headings)]
+            rows = _even(piece.rows(every), len(piece.table.headings))
             for place, heading in enumerate(piece.table.headings):
                 texts.setdefault(heading, []).extend(row[place].strip() for row in rows)
                 pieces.setdefault(heading, []).extend([number] * len(rows))
@@ -82,6 +83,13 @@ class Gathered:
                     stamp = " ".join(row[at].strip() for at in piece.table.stamp)
                     found.setdefault(stamp, dict(zip(piece.table.headings, row, strict=False)))
         return found
+
+
+def _even(rows: list[list[str]], least: int) -> list[list[str]]:
+    """Keep rows of the usual number of fields: in a torn line, columns may be shifted."""
+    widths = Counter(len(row) for row in rows if len(row) >= least)
+    usual = min(widths, key=lambda width: (-widths[width], width), default=least)
+    return [row for row in rows if len(row) == usual]
 
 
 def gather(files: Sequence[Sighting]) -> Gathered:

@@ -76,7 +76,10 @@ def _patterns(own: set[str], others: set[str]) -> tuple[str, ...]:
     if any("!" in name for name in names):
         return tuple(_escaped(path) for path in sorted(own))
     endings = {_ending(name) for name in names}
-    for pattern in (*(f"{folder}*{ending}" for ending in endings), *(f"{folder}{shape}" for shape in _shapes(names))):
+    for pattern in (
+        *(f"{folder}*{ending}" for ending in endings),
+        *(f"{folder}{shape}" for shape in _shapes(names)),
+    ):
         claims = glob_pattern(pattern)
         if all(claims.fullmatch(path) for path in own) and not any(claims.fullmatch(path) for path in others):
             return (pattern,)
@@ -160,8 +163,8 @@ def _same_source(host: Group, group: Group) -> str:
     if not shares or min(shares) < _ALIKE:
         return ""
     return (
-        f"{host.patterns[0]} and {group.patterns[0]} hold the same rows ({len(both)} stamps compared), so they"
-        " are one export; where both hold the same stamp, the earlier pattern wins"
+        f"{host.patterns[0]} and {group.patterns[0]} hold the same rows ({len(both)} stamps compared), so"
+        " they are one export; where both hold the same stamp, the earlier pattern wins"
     )
 
 

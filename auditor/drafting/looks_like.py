@@ -20,6 +20,9 @@ _COUNTER_FALLS = 0.003
 """Share of steps in which a counter may fall: resets, exchanges and single bad readings."""
 _NEAR_ZERO = 0.02
 _WORDS_SHOWN = 4
+_LONGEST_STATE = 30
+_STRAYS = 0.01
+"""Share of single odd numbers, as torn lines leave them, beside which a constant is still one."""
 _SENTINEL_TIMES = 3
 _SENTINEL_REACH = 3.0
 """A sentinel lies further from all other numbers than so many times their range."""
@@ -96,8 +99,10 @@ def find_sentinels(numbers: NDArray[np.float64]) -> list[tuple[float, int]]:
 def _of_words(texts: Counter[str]) -> Look:
     if len(texts) == 1:
         return Look(Appearance.CONSTANT, f'"{next(iter(texts))}" in every row looked at', tuple(texts))
-    if len(texts) <= _MOST_STATES:
-        return Look(Appearance.STATE, f"{len(texts)} distinct words: " + _counted(texts), tuple(sorted(texts)))
+    if len(texts) <= _MOST_STATES and all(_is_state(text) for text in texts):
+        return Look(
+            Appearance.STATE, f"{len(texts)} distinct words: " + _counted(texts), tuple(sorted(texts))
+        )
     return Look(Appearance.WORDS, f"{len(texts)} distinct words, no numbers: " + _counted(texts), ())
 
 
@@ -106,14 +111,35 @@ def _of_numbers(numbers: NDArray[np.float64], pieces: NDArray[np.int64], texts: 
     if values.size == 1:
         because = f"{shortest(float(values[0]))} in all {numbers.size} numbers looked at"
         return Look(Appearance.CONSTANT, because, tuple(texts))
-    span = f"{values.size} distinct numbers from {shortest(float(values[0]))} to {shortest(float(values[-1]))}"
+    stray = _stray(numbers)
+    if stray:
+        return Look(Appearance.CONSTANT, stray, ())
+    span = (
+        f"{values.size} distinct numbers from {shortest(float(values[0]))} to {shortest(float(values[-1]))}"
+    )
     if numbers.size >= _ENOUGH and values.size <= _MOST_STATES and (values == np.round(values)).all():
-        states = tuple(sorted(texts)) if len(texts) <= _MOST_STATES else ()
+        are_texts = len(texts) <= _MOST_STATES and all(_is_state(text) for text in texts)
+        states = tuple(sorted(texts)) if are_texts else ()
         return Look(Appearance.STATE, span, states)
     counter = _counter(numbers, pieces)
     if counter:
         return Look(Appearance.COUNTER, f"{span}; {counter}", ())
     return Look(Appearance.LEVEL, f"{span}; they rise and fall", ())
+
+
+def _stray(numbers: NDArray[np.float64]) -> str:
+    """Say that all numbers but single ones are the same; empty where they are not."""
+    values, counts = np.unique(numbers, return_counts=True)
+    usual = int(np.argmax(counts))
+    others = np.delete(counts, usual)
+    if others.max() > 1 or others.sum() > _STRAYS * numbers.size:
+        return ""
+    shown = ", ".join(shortest(float(value)) for value in np.delete(values, usual)[:_WORDS_SHOWN])
+    return f"{shortest(float(values[usual]))} in all but {others.sum()} of {numbers.size} numbers ({shown})"
+
+
+def _is_state(text: str) -> bool:
+    return text.isprintable() and len(text) <= _LONGEST_STATE
 
 
 def _counter(numbers: NDArray[np.float64], pieces: NDArray[np.int64]) -> str:

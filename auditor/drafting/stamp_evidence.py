@@ -16,6 +16,7 @@ from auditor.records.plant import DateOrder
 _HOUR_US = 3_600_000_000
 _MINUTE_US = 60_000_000
 _EPOCH = "the stamps count from 1970 and so are UTC, unless the logger counts on a clock of its own"
+_MONTHS = "January February March April May June July August September October November December".split()
 _MOST_SHOWN = 2
 _STRAYS = 0.01
 """Torn lines may read as another order: so small a share of them does not count against a proof."""
@@ -30,7 +31,7 @@ def stamp_evidence(gathered: Gathered) -> StampEvidence:
     reads = {order: read for order, read in reads.items() if read.good.any()}
     shown = [" ".join(parts).strip() for parts in zip(*texts, strict=True)]
     order, because = _order(reads, shown)
-    likely = order or next(iter(reads))
+    likely: DateOrder = order if order is not None else next(iter(reads))
     read = reads[likely]
     good = np.flatnonzero(read.good)
     in_time = good[np.argsort(read.local_us[good], kind="stable")] if order else good
@@ -66,22 +67,24 @@ def _order(reads: dict[DateOrder, Stamps], shown: Sequence[str]) -> tuple[DateOr
     for order, read in reads.items():
         others = np.any([other.good for name, other in reads.items() if name != order], axis=0)
         alone[order] = np.flatnonzero(read.good & ~others)
-    first = min(reads, key=lambda name: (-alone[name].size, name))
-    rest = sum(found.size for name, found in alone.items() if name != first)
-    if alone[first].size and rest <= _STRAYS * alone[first].size:
+    proven = sorted((name for name in reads if alone[name].size), key=lambda name: -alone[name].size)
+    if not proven:
+        at = int(np.flatnonzero(np.any([read.good for read in reads.values()], axis=0))[0])
+        dates = " or ".join(
+            f"{_date(int(read.local_us[at]))} ({name})" for name, read in reads.items() if read.good[at]
+        )
+        return None, f'no day above 12 was seen, so "{shown[at]}" may be {dates}'
+    first = proven[0]
+    rest = sum(alone[name].size for name in proven[1:])
+    if rest <= _STRAYS * alone[first].size:
         return first, f'"{shown[int(alone[first][0])]}" can only be read so'
-    at = int(np.flatnonzero(np.all([read.good for read in reads.values()], axis=0) | (rest > 0))[0])
-    readings = " or ".join(
-        f"{_date(int(read.local_us[at]))} ({name})" for name, read in reads.items() if read.good[at]
-    )
-    if rest:
-        return None, f"some stamps can only be read one way and some only another: is this one logger? {readings}"
-    return None, f'no day above 12 was seen, so "{shown[at]}" may be {readings}'
+    examples = " but ".join(f'"{shown[int(alone[name][0])]}" can only be read {name}' for name in proven)
+    return None, f"{examples}: are these files of one logger?"
 
 
 def _date(local_us: int) -> str:
-    moment = np.datetime64(local_us, "us").item()
-    return f"{moment.day} {moment:%B %Y}"
+    year, month, day = str(np.datetime64(local_us, "us"))[:10].split("-")
+    return f"{int(day)} {_MONTHS[int(month) - 1]} {year}"
 
 
 def _clock(
@@ -95,7 +98,7 @@ def _clock(
         whole = zoned.size == int(read.good.sum())
         named = ", ".join(_offset(int(value)) for value in np.unique(read.offset_us[zoned]))
         return (
-            f'{"every stamp names" if whole else "some stamps name"} an offset of its own: {named}'
+            f"{'every stamp names' if whole else 'some stamps name'} an offset of its own: {named}"
             f' ("{shown[int(zoned[0])]}")',
         )
     said = ["no stamp names an offset from UTC"]
@@ -116,9 +119,7 @@ def _offset(offset_us: int) -> str:
     return "UTC" if minutes == 0 else f"{sign}{abs(minutes) // 60:02d}:{abs(minutes) % 60:02d}"
 
 
-def _hour_steps(
-    local_us: NDArray[np.int64], steps_us: NDArray[np.int64], sign: int
-) -> NDArray[np.int64]:
+def _hour_steps(local_us: NDArray[np.int64], steps_us: NDArray[np.int64], sign: int) -> NDArray[np.int64]:
     """Find rows after which the clock moves by an hour more or less, in the small hours of a Sunday."""
     usual = float(np.median(steps_us)) if steps_us.size > 2 else 0.0
     if not 0.0 < usual <= _HOUR_US / 2:

@@ -18,7 +18,7 @@ from auditor.drafting.first_look import CALENDAR, Sighting, look_first
 from auditor.drafting.gathering import Column
 from auditor.drafting.grouping import Group, group_files
 from auditor.drafting.looks_like import look_at_column
-from auditor.drafting.proposals import Draft, ExportProposal, TagProposal
+from auditor.drafting.proposals import Appearance, Draft, ExportProposal, TagProposal
 from auditor.drafting.stamp_evidence import stamp_evidence
 from auditor.log_reading.listing import every_file
 from auditor.log_reading.stamps import read_stamps, texts_of
@@ -81,7 +81,9 @@ def _export(group: Group, used: set[str], names: set[str]) -> ExportProposal:
         doubled = {name for name in table.headings if name and table.headings.count(name) > 1}
         left_out = _left_out(columns, {*stamp, *doubled}, remarks)
         remarks += [f'the heading "{name}" stands twice: no tag can bind it' for name in sorted(doubled)]
-        cells = {name: columns[name] for name in group.headings if name not in left_out}
+        cells = {
+            name: columns[name] for name in group.headings if name not in left_out and name.isprintable()
+        }
     else:
         cells, units = long_columns(gathered, columns, layout)
     decimal, because = decimal_mark(
@@ -93,6 +95,9 @@ def _export(group: Group, used: set[str], names: set[str]) -> ExportProposal:
         look = look_at_column(found, decimal)
         if look is None:
             remarks.append(f'the column "{column}" is empty in all rows looked at: left out')
+            continue
+        if look.appearance is Appearance.WORDS:
+            remarks.append(f'the column "{column}" holds {look.because}: left out')
             continue
         rows = [(units[column], "in the column of units")] if column in units else []
         rows += unit_rows((file.table for file in group.files), column)

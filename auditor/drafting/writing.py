@@ -9,31 +9,40 @@ from dataclasses import asdict
 from typing import Any
 
 from auditor.drafting.proposals import Appearance, Draft, ExportProposal, StampEvidence, TagProposal
+from auditor.records.kinds import KINDS
 
 BLANK = "#? "
 """A line that begins so is a blank: without these characters, and with its value, it is a key."""
 
+_ADDS_UP = ("energy", "volume", "mass")
+"""Kinds of quantity that a counter or an amount may be of."""
+
 _HEAD = """\
 # A first plant file, drafted from the exports alone.
 #
-# What the exports prove is written as a key, with the evidence behind it. Every line that begins with "#?" is a
-# blank that no export can fill: take away the "#?" and write the value, or delete the line where its comment says
-# that it does not apply. `auditor check SITE` names the keys that are still missing. Delete the tags that you do not
-# need: a column that no tag binds is noted and otherwise ignored. The names of exports and tags are yours to change.
+# What the exports prove is written as a key, with the evidence behind it. Every line that begins with "#?"
+# is a blank that no export can fill: take away the "#?" and write the value, or delete the line where its
+# comment says that it does not apply. `auditor check SITE` names the keys that are still missing, those of a
+# tag once its `between` is written. Delete the tags that you do not need: a column that no tag binds is noted
+# and otherwise ignored. The names of exports and tags are yours to change.
 #
 # The blanks, and why they stay blank:
-#   clock        whose clock the stamps are of: an IANA zone such as "Europe/Stockholm" (with summer time), "UTC", or a
-#                fixed offset such as "+01:00" (winter time all year). An hour's error looks like a poor machine.
-#   between      what a value means between two stamps. "step": it holds until the next is stored (stored on change);
-#                "line": it runs straight to the next (sampled); "mean" or "amount": the mean of, or the total in, the
-#                stretch that the stamp marks; "counter": an index that counts up; "state": a breaker, a mode.
-#                The same numbers fit several of these, and the energy depends on it: ask who set up the logger.
+#   clock        whose clock the stamps are of: an IANA zone such as "Europe/Stockholm" (with summer time),
+#                "UTC", or a fixed offset such as "+01:00" (winter time all year). An hour's error looks like
+#                a poor machine.
+#   between      what a value means between two stamps. "step": it holds until the next is stored (stored on
+#                change); "line": it runs straight to the next (sampled); "mean" or "amount": the mean of, or
+#                the total in, the stretch that the stamp marks; "counter": an index that counts up; "state":
+#                a breaker, a mode. The same numbers fit several of these, and the energy depends on it: ask
+#                who set up the logger.
 #   stamp_marks  only with mean or amount: whether the stamp is the "start" or the "end" of its stretch.
-#   hold         longest time between two samples that is still covered, such as "5 min"; optional with mean, amount
-#                and counter.
-#   standard     one standard uncertainty of the value, or `limit`, the class limit of the instrument. A bare number is
-#                in the tag's own unit, "0.5 K" names it, "2 %" is of the reading, "2 % of 1200 kW" of the span.
-#   pressure     "gauge" (against the air) or "absolute" (against vacuum). Taken wrongly, gas is off by a factor.
+#   hold         longest time between two samples that is still covered, such as "5 min"; optional with mean,
+#                amount and counter.
+#   standard     one standard uncertainty of the value, or `limit`, the class limit of the instrument. A bare
+#                number is in the tag's own unit, "0.5 K" names it, "2 %" is of the reading, "2 % of 1200 kW"
+#                of the span.
+#   pressure     "gauge" (against the air) or "absolute" (against vacuum). Taken wrongly, a gas volume is off
+#                by a factor.
 schema = 1
 
 [site]
@@ -44,11 +53,12 @@ schema = 1
 
 _TAIL = """\
 
-# --- what is audited: exports do not show it ------------------------------------------------------------------
-# Name each machine and the streams of energy that cross its boundary, by the tags above. With a fuel, gas volume
-# or carrier fluid, tables [fuels.NAME], [gas_meters.NAME] and [fluids.NAME] belong here too; `auditor check --schema`
-# prints every key. No export proves these, so they stay blank: the reference state of a gas volume (volume_state),
-# whether a gas meter already reads at it (reads), the heating value and its basis, gross or net power.
+# --- what is audited: exports do not show it --------------------------------------------------------------
+# Name each machine and the streams of energy that cross its boundary, by the tags above. With a fuel, gas
+# volume or carrier fluid, tables [fuels.NAME], [gas_meters.NAME] and [fluids.NAME] belong here too;
+# `auditor check --schema` prints every key. No export proves these, so they stay blank: the reference state
+# of a gas volume (volume_state), whether a gas meter already reads at it (reads), the heating value and its
+# basis, gross or net power.
 #? [machines.NAME]
 #? title =                 # its name in the report
 #? kind =                  # {kinds}
@@ -62,8 +72,6 @@ _TAIL = """\
 
 def draft_text(draft: Draft) -> str:
     """Write a draft as the text of a plant file; the same draft gives the same text."""
-    from auditor.records.kinds import KINDS
-
     lines = [_HEAD.rstrip("\n")]
     for export in draft.exports:
         lines += _export_lines(export)
@@ -91,11 +99,10 @@ def _export_lines(export: ExportProposal) -> Iterator[str]:
     stamps = export.stamps
     yield ""
     yield f"[exports.{_key(export.name)}]"
-    span = f'{_count(export.count, "file")}; stamps from "{stamps.first}" to "{stamps.last}" in the lines looked at'
-    yield _remark(span)
+    files = _count(export.count, "file")
+    yield _remark(f'{files}; stamps from "{stamps.first}" to "{stamps.last}" in the lines looked at')
     yield from (_remark(text) for text in export.remarks)
-    files = ", ".join(_text(pattern) for pattern in export.files)
-    yield f"files = [{files}]"
+    yield f"files = [{', '.join(_text(pattern) for pattern in export.files)}]"
     yield _blank("clock", "; ".join(stamps.clock))
     if stamps.order is None:
         yield _blank("date_order", f"{stamps.because}: declare the order of the date")
@@ -144,12 +151,19 @@ def _tag_lines(export: ExportProposal, tag: TagProposal) -> Iterator[str]:
 
 
 def _between(tag: TagProposal) -> str:
+    adds_up = tag.unit.quantity in _ADDS_UP
     if tag.appearance is Appearance.COUNTER:
+        if tag.unit.quantity and not adds_up:
+            return (
+                f"it counts up, but {tag.unit.quantity} is no counter that can be read: is this tag needed?"
+            )
         return "counter, if it is an index that counts up"
     if tag.appearance is Appearance.STATE:
         return "state, if these texts stand for states; else step, line, mean or amount"
     if tag.appearance is Appearance.CONSTANT:
-        return "one number or word shows nothing"
+        return "cells that are all the same do not show it"
+    if adds_up:
+        return f"{tag.unit.quantity} that rises and falls: amount, if each row is the total of its stretch"
     return "step, line, mean or amount: the numbers do not show which"
 
 
