@@ -22,7 +22,6 @@ from auditor.units import UnitError, meanings, split_qualifier
 
 HEAD_BYTES = 1 << 17
 _HEAD_LINES = 150
-_KEPT_LINES = 40
 _STAMP_PLACES = 4
 """The stamp stands in one of the first columns."""
 CALENDAR: tuple[DateOrder, ...] = ("year first", "day first", "month first")
@@ -77,7 +76,7 @@ def look_first(stored: StoredFile) -> Sighting | str:
         return table
     data = head[table.first_line - 1 :]
     known = frozenset(line.strip() for line in head[: table.first_line - 1]) - {""}
-    return Sighting(stored, table, known, tuple(line for line in data if line.strip())[:_KEPT_LINES])
+    return Sighting(stored, table, known, tuple(line for line in data if line.strip()))
 
 
 def _head(stored: StoredFile) -> list[str]:

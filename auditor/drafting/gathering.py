@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 from auditor.drafting.first_look import HEAD_BYTES, Sighting, Table
 from auditor.log_reading.dialect import split_fields
@@ -14,8 +15,10 @@ from auditor.log_reading.samples import split_lines, take_samples
 _FILES_SAMPLED = 8
 _LINES = 40_000
 """About so many lines of an export have their stamps looked at."""
-_ROWS = 3_000
+_ROWS = 2_000
 """About so many rows of an export have their cells looked at."""
+_COMPARED_LINES = 3_000
+"""So many lines of each piece are held beside those of another export."""
 _PACKED_MOST = 8 << 20
 """A larger packed file is looked at in its head only: its end is found by unpacking all of it."""
 
@@ -74,14 +77,16 @@ class Gathered:
                 pieces.setdefault(heading, []).extend([number] * len(rows))
         return {heading: Column(tuple(texts[heading]), tuple(pieces[heading])) for heading in texts}
 
+    @cached_property
     def records(self) -> dict[str, dict[str, str]]:
-        """Rows by the text of their stamp, cells by heading; of one stamp the first."""
+        """Some rows by the text of their stamp, cells by heading; of one stamp the first."""
         found: dict[str, dict[str, str]] = {}
         for piece in self.pieces:
-            for row in piece.rows():
-                if len(row) >= len(piece.table.headings):
+            headings = piece.table.headings
+            for row in piece.rows(most=_COMPARED_LINES):
+                if len(row) >= len(headings):
                     stamp = " ".join(row[at].strip() for at in piece.table.stamp)
-                    found.setdefault(stamp, dict(zip(piece.table.headings, row, strict=False)))
+                    found.setdefault(stamp, dict(zip(headings, row, strict=False)))
         return found
 
 
@@ -109,10 +114,10 @@ def _spread(files: Sequence[Sighting], most: int) -> list[Sighting]:
 
 def _pieces(sighting: Sighting, most: int) -> list[Piece]:
     stored = sighting.stored
-    is_large = not stored.is_plain and max(stored.real.stat().st_size, stored.bytes) > _PACKED_MOST
-    if is_large:
-        return [Piece(sighting.table, sighting.lines)]
     try:
+        is_packed = not stored.is_plain
+        if is_packed and max(stored.real.stat().st_size, stored.bytes) > _PACKED_MOST:
+            return [Piece(sighting.table, sighting.lines)]
         samples = take_samples(stored, None).samples
     except READ_ERRORS:  # its head could be read: what is known of it stands
         return [Piece(sighting.table, sighting.lines)]

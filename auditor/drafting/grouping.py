@@ -10,6 +10,8 @@ from auditor.drafting.first_look import Sighting
 from auditor.drafting.gathering import Gathered, gather
 from auditor.log_reading.cells import read_number
 
+_DATE_FOLDER = re.compile(r"(19|20)\d\d([-_.]?\d\d){0,2}|(19|20)\d\d[-_.]?[wW]\d\d")
+_DAY_FOLDER = re.compile(r"[wW]?\d\d")
 _COMPARED_ROWS = 200
 _ENOUGH_ROWS = 10
 _ALIKE = 0.9
@@ -49,7 +51,7 @@ def group_files(sightings: Sequence[Sighting], others: Sequence[str]) -> tuple[G
     for sighting in sightings:
         table = sighting.table
         stamp = tuple(table.headings[place] for place in table.stamp)
-        folder = _outer(sighting.stored.path).rpartition("/")[0]
+        folder = _dateless(_outer(sighting.stored.path).rpartition("/")[0])
         kinds.setdefault((folder, frozenset(table.headings) - {""}, table.delimiter, stamp), []).append(
             sighting
         )
@@ -61,6 +63,21 @@ def group_files(sightings: Sequence[Sighting], others: Sequence[str]) -> tuple[G
     return tuple(_joined(groups))
 
 
+def _dateless(folder: str) -> str:
+    """Put a star for every part of a folder that is a date: a year, and months and days below it.
+
+    Examples
+    --------
+    >>> _dateless("boiler/2026/07/01"), _dateless("2026-07-01/boiler"), _dateless("engine1")
+    ('boiler/*/*/*', '*/boiler', 'engine1')
+    """
+    parts: list[str] = []
+    for part in folder.split("/"):
+        is_date = _DATE_FOLDER.fullmatch(part) or (parts[-1:] == ["*"] and _DAY_FOLDER.fullmatch(part))
+        parts.append("*" if is_date else _escaped(part))
+    return "/".join(parts)
+
+
 def _outer(path: str) -> str:
     return path.partition("!")[0]
 
@@ -70,7 +87,7 @@ def _patterns(own: set[str], others: set[str]) -> tuple[str, ...]:
     outer = {_outer(path) for path in own}
     if all(_outer(path) not in outer for path in others):
         own, others = outer, {_outer(path) for path in others}
-    folder = _escaped(next(iter(sorted(own))).rpartition("/")[0])
+    folder = _dateless(_outer(min(own)).rpartition("/")[0])
     folder += "/" if folder else ""
     names = sorted(path.rpartition("/")[2] for path in own)
     if any("!" in name for name in names):
@@ -151,7 +168,7 @@ def _same_source(host: Group, group: Group) -> str:
     if not set(group.headings) <= common or host.files[0].table.delimiter != group.files[0].table.delimiter:
         return ""
     stamps = {name for file in group.files for name in (file.table.headings[at] for at in file.table.stamp)}
-    first, second = host.gathered.records(), group.gathered.records()
+    first, second = host.gathered.records, group.gathered.records
     both = [stamp for stamp in second if stamp in first][:_COMPARED_ROWS]
     if len(both) < _ENOUGH_ROWS:
         return ""

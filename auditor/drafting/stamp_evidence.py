@@ -10,11 +10,14 @@ from numpy.typing import NDArray
 
 from auditor.drafting.gathering import Gathered
 from auditor.drafting.proposals import StampEvidence
+from auditor.log_reading.stamps import DAY_US as _DAY_US
 from auditor.log_reading.stamps import NO_OFFSET, Stamps, read_stamps, shape_in_words, texts_of
 from auditor.records.plant import DateOrder
 
 _HOUR_US = 3_600_000_000
 _MINUTE_US = 60_000_000
+_SUNDAY = 3
+"""Days are counted from 1970-01-01, a Thursday; clocks change in the night to a Sunday."""
 _EPOCH = "the stamps count from 1970 and so are UTC, unless the logger counts on a clock of its own"
 _MONTHS = "January February March April May June July August September October November December".split()
 _MOST_SHOWN = 2
@@ -110,7 +113,43 @@ def _clock(
         said += [f'the clock {what} from "{one}" to "{two}"' for one, two in list(found)[:_MOST_SHOWN]]
     if len(said) == 1:
         said.append("no repeated and no skipped hour was seen in the lines looked at")
+        said += [
+            f"the night to Sunday {night} ran through, though clocks change then in {where}"
+            for night, where in _quiet_nights([read.local_us[rows] for rows in runs], steps)[:_MOST_SHOWN]
+        ]
     return tuple(said)
+
+
+def _quiet_nights(
+    runs_us: Sequence[NDArray[np.int64]], steps_us: Sequence[NDArray[np.int64]]
+) -> list[tuple[str, str]]:
+    """Find nights of a clock change whose small hours stand in the log without a leap or a fall."""
+    found: dict[tuple[str, str], None] = {}
+    for local_us, steps in zip(runs_us, steps_us, strict=True):
+        if not steps.size or not 0.0 < np.median(steps) <= _HOUR_US / 2:
+            continue
+        for day in np.unique(local_us // _DAY_US):
+            where = _changes_in(int(day))
+            small = (local_us >= day * _DAY_US) & (local_us < day * _DAY_US + 4 * _HOUR_US)
+            inside = np.diff(local_us[small])
+            is_quiet = inside.size > 0 and inside.min() >= 0 and inside.max() < _HOUR_US / 2
+            if where and is_quiet and inside.sum() > 3 * _HOUR_US:
+                found[(_date(int(day) * _DAY_US), where)] = None
+    return list(found)
+
+
+def _changes_in(day: int) -> str:
+    """Say where clocks change on a day since 1970-01-01.
+
+    Europe: Directive 2000/84/EC, last Sundays of March and October. North America: second Sunday of March
+    and first of November (United States Energy Policy Act of 2005; from memory).
+    """
+    _, month, of_month = (int(part) for part in str(np.datetime64(day, "D")).split("-"))
+    if day % 7 != _SUNDAY:
+        return ""
+    if month in (3, 10) and of_month >= 25:
+        return "Europe"
+    return "North America" if (month, (of_month + 6) // 7) in ((3, 2), (11, 1)) else ""
 
 
 def _offset(offset_us: int) -> str:
@@ -125,8 +164,7 @@ def _hour_steps(local_us: NDArray[np.int64], steps_us: NDArray[np.int64], sign: 
     if not 0.0 < usual <= _HOUR_US / 2:
         return np.zeros(0, np.int64)
     small_hours = (local_us[:-1] // _HOUR_US) % 24 <= 3
-    # Days are counted from 1970-01-01, a Thursday; clocks change in the night to a Sunday.
-    sunday = (local_us[:-1] // (24 * _HOUR_US)) % 7 == 3
+    sunday = (local_us[:-1] // _DAY_US) % 7 == _SUNDAY
     by_an_hour = np.abs(steps_us - sign * _HOUR_US - usual) <= 0.5 * usual
     return np.flatnonzero(small_hours & sunday & by_an_hour)
 

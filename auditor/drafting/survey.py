@@ -81,9 +81,7 @@ def _export(group: Group, used: set[str], names: set[str]) -> ExportProposal:
         doubled = {name for name in table.headings if name and table.headings.count(name) > 1}
         left_out = _left_out(columns, {*stamp, *doubled}, remarks)
         remarks += [f'the heading "{name}" stands twice: no tag can bind it' for name in sorted(doubled)]
-        cells = {
-            name: columns[name] for name in group.headings if name not in left_out and name.isprintable()
-        }
+        cells = {name: columns[name] for name in group.headings if name not in left_out}
     else:
         cells, units = long_columns(gathered, columns, layout)
     decimal, because = decimal_mark(
@@ -133,6 +131,10 @@ def _left_out(columns: Mapping[str, Column], known: set[str], remarks: list[str]
         filled = [text for text in column.texts if text]
         if name in known or not filled or not name:
             continue
+        if not name.isprintable():
+            more.add(name)
+            remarks.append(f'the heading "{name}" holds a character that cannot be printed: left out')
+            continue
         good = max(int(read_stamps([texts_of(filled)], order).good.sum()) for order in CALENDAR)
         if good > 0.9 * len(filled):
             more.add(name)
@@ -142,11 +144,11 @@ def _left_out(columns: Mapping[str, Column], known: set[str], remarks: list[str]
 
 def _export_name(group: Group) -> str:
     """Return the folder's name, or what the names of the files begin with."""
-    path = group.patterns[0].partition("!")[0]
-    folder, _, file = path.rpartition("/")
-    plain = group.patterns[0].rpartition("/")[2]
-    text = folder.rpartition("/")[2] if folder and plain.startswith("*") else re.split(r"[\d*.]", file)[0]
-    return tag_name(re.sub(r"[^\w-]+", "_", text)).strip("-_") if text.strip("-_ ") else "logger"
+    *folders, file = group.patterns[0].partition("!")[0].split("/")
+    named = [folder for folder in folders if folder != "*"]
+    text = named[-1] if named and file.startswith("*") else re.split(r"[\d*.]", file)[0]
+    plain = re.sub(r"[^\w-]+", "_", text).strip("-_")
+    return tag_name(plain) if plain else "logger"
 
 
 def _unique(name: str, used: set[str], prefix: str = "") -> str:
