@@ -135,6 +135,30 @@ def decimal_mark(cells: Iterable[str], delimiter: str) -> tuple[Literal[".", ","
     return None, "only whole numbers were seen"
 
 
+_HEADING_WORDS = {
+    "temperature": r"temp",
+    "flow": r"flow|durchfl|volumenstrom|massenstrom|d[ée]bit|fl[öø]de|caudal|portata",
+    "power": r"power|leistung|puissance|effekt|potencia|potenza",
+    "pressure": r"press|druck|tryck|tryk|presi[óo]n",
+    "energy or amount": r"energ|counter|total|z[äa]hler|compteur|contador",
+}
+"""How headings of a few languages name what they hold; common practice, no source. A hint, never a unit."""
+
+
+def _heading_hint(heading: str) -> str:
+    """Say what a heading without a unit reads like; empty where its words tell nothing.
+
+    Examples
+    --------
+    >>> _heading_hint("Durchfluss V40"), _heading_hint("OR-G")
+    ('; its heading reads like a flow', '')
+    """
+    kinds = [kind for kind, words in _HEADING_WORDS.items() if re.search(words, heading, re.IGNORECASE)]
+    if len(kinds) != 1:
+        return ""
+    return f"; its heading reads like {'an' if kinds[0][0] in 'aeiou' else 'a'} {kinds[0]}"
+
+
 def unit_of(heading: str, rows: Iterable[tuple[str, str]]) -> UnitFound:
     """Say which unit an export names for a column.
 
@@ -156,7 +180,7 @@ def unit_of(heading: str, rows: Iterable[tuple[str, str]]) -> UnitFound:
     if not written:
         found = _BRACKETS.search(heading)
         if found is None:
-            return UnitFound("", "", "", "nothing in the export names it")
+            return UnitFound("", "", "", "nothing in the export names it" + _heading_hint(heading))
         # One letter in round brackets is as often a phase or a place as a unit.
         if (found["open"] == "(" and len(found["unit"]) == 1 and found["unit"] != "%") or found[
             "unit"

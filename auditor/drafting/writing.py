@@ -126,9 +126,8 @@ def _export_lines(export: ExportProposal) -> Iterator[str]:
 
 def _tag_lines(export: ExportProposal, tag: TagProposal) -> Iterator[str]:
     is_state = tag.appearance is Appearance.STATE
-    looks = tag.appearance.value + (f" of {tag.unit.quantity}" if tag.unit.quantity else "")
     yield f"[exports.{_key(export.name)}.tags.{_key(tag.name)}]"
-    yield _remark(f"looks like {looks}: {tag.because}")
+    yield _remark(f"looks like {_looks(tag)}: {tag.because}")
     yield f"column = {_text(tag.column)}"
     if tag.unit.unit:
         yield _filled("unit", _text(tag.unit.unit), tag.unit.because)
@@ -148,6 +147,15 @@ def _tag_lines(export: ExportProposal, tag: TagProposal) -> Iterator[str]:
     if tag.unit.quantity == "fraction" and re.search("O2|CO|oxygen", tag.column, re.IGNORECASE):
         yield _blank("basis", "dry or wet: only where oxygen gives a flue-gas flow")
     yield _blank("standard", "or limit; not with a state" if is_state else "or limit")
+
+
+def _looks(tag: TagProposal) -> str:
+    quantity = tag.unit.quantity
+    if quantity and tag.appearance is Appearance.LEVEL:
+        return f"{'an' if quantity[0] in 'aeiou' else 'a'} {quantity}"
+    if quantity and tag.appearance is Appearance.COUNTER:
+        return f"{tag.appearance.value} of {quantity}"
+    return tag.appearance.value
 
 
 def _between(tag: TagProposal) -> str:
