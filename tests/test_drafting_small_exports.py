@@ -334,6 +334,19 @@ def test_noise_is_skipped_with_a_reason(tmp_path: Path) -> None:
     assert reasons["empty.csv"] == "empty file"
 
 
+def test_files_that_are_set_aside_anyway_do_not_narrow_a_pattern(tmp_path: Path) -> None:
+    """Tomorrow's file is empty today, and a copy is under way: the pattern is still the plain one."""
+    files: dict[str, str | bytes] = {"e/a_1.csv": table("t;a", numbers()), "e/a_2.csv": b"", "e/.x.csv": "x"}
+    assert [export.files for export in drafted(tmp_path, files).exports] == [("e/*.csv",)]
+
+
+def test_large_numbers_are_no_stamps(tmp_path: Path) -> None:
+    """Serial numbers could be seconds since 1970, but time does not run back and forth."""
+    rows = "".join(f"{1_000_000_000 + (at * 7_919_777) % 50_000_000};{at % 7},5\n" for at in range(48))
+    with pytest.raises(NoDataError, match="no column of it holds time stamps"):
+        draft_plant(lay(tmp_path, {"a.csv": "serial;a\n" + rows}))
+
+
 def test_nothing_but_noise(tmp_path: Path) -> None:
     """Without any export there is nothing to draft."""
     with pytest.raises(NoDataError, match="no file below this folder holds a table with time stamps"):

@@ -24,6 +24,8 @@ HEAD_BYTES = 1 << 17
 _HEAD_LINES = 150
 _STAMP_PLACES = 4
 """The stamp stands in one of the first columns."""
+_RUNS_ON = 0.9
+"""Share of steps in one direction from which numbers may be seconds."""
 CALENDAR: tuple[DateOrder, ...] = ("year first", "day first", "month first")
 EPOCHS: tuple[DateOrder, ...] = ("epoch seconds", "epoch milliseconds")
 _DELIMITERS = (";", "\t", ",")
@@ -133,7 +135,14 @@ def _stamp_columns(rows: Sequence[Sequence[str]]) -> tuple[tuple[int, ...], NDAr
             return (place, place + 1), both, False
         return stamp, goods[place], False
     good = _read(rows, (0,), EPOCHS)
-    return ((0,), good, True) if good.sum() >= 2 else None
+    if good.sum() < 2:
+        return None
+    # Any large number could be seconds since 1970; time runs on from row to row.
+    steps = np.diff(
+        [float(row[0].replace(",", ".")) for row, is_good in zip(rows, good, strict=True) if is_good]
+    )
+    runs_on = max((steps >= 0).mean(), (steps <= 0).mean()) >= _RUNS_ON and steps.any()
+    return ((0,), good, True) if runs_on else None
 
 
 def _read(

@@ -44,10 +44,13 @@ def draft_plant(logs: Path) -> Draft:
     files, unreadable = every_file(logs)
     sightings: list[Sighting] = []
     skipped = list(unreadable)
+    foreign: list[str] = []
     for stored in files:
         found = look_first(stored)
         if isinstance(found, str):
             skipped.append((stored.path, found))
+            # Hidden, empty and unfinished files are set aside by themselves, whichever pattern claims them.
+            foreign += [] if stored.set_aside else [stored.path]
         else:
             sightings.append(found)
     if not sightings:
@@ -62,7 +65,7 @@ def draft_plant(logs: Path) -> Draft:
                 )
             ]
         )
-    groups = group_files(sightings, [path for path, _ in skipped])
+    groups = group_files(sightings, [*foreign, *(path for path, _ in unreadable)])
     used: set[str] = set()
     names: set[str] = {_RESERVED}
     exports = tuple(_export(group, used, names) for group in groups)

@@ -40,7 +40,7 @@ _HEAD = """\
 #                amount and counter.
 #   standard     one standard uncertainty of the value, or `limit`, the class limit of the instrument. A bare
 #                number is in the tag's own unit, "0.5 K" names it, "2 %" is of the reading, "2 % of 1200 kW"
-#                of the span.
+#                of the span; of a tag in %, a bare number is points, and "2 % of reading" is of the reading.
 #   pressure     "gauge" (against the air) or "absolute" (against vacuum). Taken wrongly, a gas volume is off
 #                by a factor.
 schema = 1
