@@ -38,6 +38,7 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(dest="command", required=True, metavar="COMMAND")
     _add_audit(commands)
     _add_check(commands)
+    _add_draft(commands)
     _add_demo(commands)
     _add_nightly(commands)
     return parser
@@ -83,6 +84,19 @@ def _add_check(commands: argparse._SubParsersAction[argparse.ArgumentParser]) ->
     )
     command.add_argument("--schema", action="store_true", help="print the JSON schema of plant.toml instead")
     command.set_defaults(run="auditor.commands:run_check")
+
+
+def _add_draft(commands: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
+    command = _command(
+        commands,
+        "draft",
+        "Propose a first plant.toml from a folder of exports, with blanks for what they cannot prove.",
+    )
+    command.add_argument("logs", type=Path, metavar="LOGS", help="folder of exports; only ever read")
+    command.add_argument(
+        "--out", type=Path, metavar="FILE", help="new file to write instead of printing; never written over"
+    )
+    command.set_defaults(run="auditor.commands:run_draft")
 
 
 def _add_demo(commands: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:

@@ -11,12 +11,13 @@ from datetime import date
 from pathlib import Path
 
 from auditor.audit_run import OpenedSite, audit_opened, check, open_site
+from auditor.drafting import Draft, draft_entries, draft_plant, draft_text
 from auditor.log_reading import hash_files
 from auditor.nightly import content_key, nightly
 from auditor.plant_file import plant_schema
 from auditor.progress import shown_progress
 from auditor.publishing import REPORT, publish, publish_month
-from auditor.records.errors import Exit, Fault, UsageError, worst
+from auditor.records.errors import Exit, Fault, InputOutputError, UsageError, worst
 from auditor.records.result import AuditResult
 from auditor.report.statement import statement
 from auditor.report.terminal import audit_summary, check_json, check_text
@@ -91,6 +92,52 @@ def run_check(options: argparse.Namespace) -> int:
         checked = check(opened, progress)
     _out(check_json(checked) if options.json else check_text(checked))
     return int(Exit.FIRM)
+
+
+def run_draft(options: argparse.Namespace) -> int:
+    """``auditor draft``: a first plant file, with a blank for everything that exports do not prove."""
+    logs, target = options.logs, options.out
+    if not logs.is_dir():
+        raise UsageError([Fault(str(logs), "there is no such folder", "name the folder of the exports")])
+    if target is not None and target.exists():
+        raise UsageError(
+            [Fault(str(target), "this file exists, and a draft never writes over one", "name a new file")]
+        )
+    # Patterns of the plant file are below logs/, also where the site's folder was named.
+    draft = draft_plant(logs / LOGS if (logs / LOGS).is_dir() else logs)
+    text = draft_text(draft)
+    if target is not None:
+        try:
+            with target.open("x", encoding="utf-8", newline="\n") as stream:
+                stream.write(text)
+        except OSError as error:
+            raise InputOutputError(
+                [
+                    Fault(
+                        str(target),
+                        f"it cannot be written: {error.strerror}",
+                        "name a file in a folder that exists and that you may write to",
+                    )
+                ]
+            ) from error
+    if options.json:
+        _out(json.dumps({**draft_entries(draft), "plant_file": text}, indent=1, ensure_ascii=False))
+    elif target is None:
+        _out(text)
+    if not options.quiet:
+        _tell_of_draft(draft)
+    return int(Exit.FIRM)
+
+
+def _tell_of_draft(draft: Draft) -> None:
+    for path, reason in draft.skipped:
+        sys.stderr.write(f"skipped {path}: {reason}\n")
+    files = sum(export.count for export in draft.exports)
+    tags = sum(len(export.tags) for export in draft.exports)
+    sys.stderr.write(
+        f"{len(draft.exports)} kinds of export in {files} files, {tags} tags proposed;"
+        ' fill the lines that begin with "#?", then run auditor check SITE\n'
+    )
 
 
 def run_demo(options: argparse.Namespace) -> int:

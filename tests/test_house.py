@@ -18,6 +18,7 @@ ALLOWED = {
     "units": {"records"},
     "plant_file": {"records", "units"},
     "log_reading": {"records", "units"},
+    "drafting": {"records", "units", "log_reading"},
     "cleaning": {"records"},
     "metering": {"records", "physics"},
     "balancing": {"records", "physics"},
@@ -36,7 +37,7 @@ ALLOWED = {
     "nightly": {"records", "audit_run", "publishing", "history", "log_reading", "site_folder"},
     "commands": {
         *("records", "audit_run", "nightly", "publishing", "report", "resources", "site_folder"),
-        *("progress", "plant_file", "log_reading"),
+        *("progress", "plant_file", "log_reading", "drafting"),
     },
     "command_line": {"records", "commands"},
     "__main__": {"command_line"},

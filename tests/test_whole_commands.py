@@ -19,7 +19,7 @@ FILES = {
     ),
     "notes.txt": b"nobody claims this",
 }
-COMMANDS = ("audit", "check", "demo", "nightly")
+COMMANDS = ("audit", "check", "draft", "demo", "nightly")
 
 
 def test_help_of_the_program_names_commands_and_exit_codes() -> None:

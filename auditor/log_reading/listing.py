@@ -115,6 +115,19 @@ def list_logs(logs: Path, exports: Mapping[str, Export]) -> Listing:
     return Listing(tuple(claims), tuple(unclaimed), tuple(unreadable))
 
 
+def every_file(logs: Path) -> tuple[tuple[StoredFile, ...], tuple[tuple[str, str], ...]]:
+    """Return every file and archive member below a folder, and the archives that cannot be read with why."""
+    files: list[StoredFile] = []
+    unreadable: list[tuple[str, str]] = []
+    for stored in _walk(logs):
+        try:
+            is_archive = not stored.set_aside and stored.path.lower().endswith(".zip")
+            files += _members(stored) if is_archive else (stored,)
+        except READ_ERRORS as error:
+            unreadable.append((stored.path, reason_of(error)))
+    return tuple(files), tuple(unreadable)
+
+
 def hash_files(logs: Path) -> dict[str, str]:
     """Return the SHA-256 of the stored bytes of every file below ``logs/``, by path with ``/``.
 
