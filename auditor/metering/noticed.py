@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from auditor.metering.heating_values import valid_entry
 from auditor.metering.inputs import counted
+from auditor.metering.swapped import swapped_pairs
 from auditor.metering.ways import made_of
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.machines import GasVolume, LiquidFuel, Role
@@ -41,6 +42,7 @@ def findings_of(
     findings: list[Finding] = []
     for stream in settings.streams().values():
         findings.extend(_refused(stream, table, metered, ticks, settings))
+        findings.extend(swapped_pairs(stream, table))
         if made_of(stream) is None and stream.role not in _TRUE_AT_STANDSTILL:
             findings.extend(_creep(stream, table))
     for name, fuel in settings.fuels.items():

@@ -20,6 +20,8 @@ DISPOSITIONS: dict[Disposition, str] = {
     Disposition.DISTRUSTED: "excluded by a person in the plant file",
     Disposition.OUTSIDE_PERIOD: "before or after the period of this statement",
     Disposition.CARRIED_IN: "before the period, but still holding when it began",
+    Disposition.CHANGED_TOO_FAST: "farther from the last believed reading than the plant file lets it change",
+    Disposition.ZERO_WHILE_RUNNING: "zero, or in one tick with a zero, while another tag speaks against it",
 }
 
 SECONDS: dict[SecondKind, str] = {
