@@ -50,8 +50,7 @@ def long_stands(tallies: Mapping[str, Tally], settings: CleaningSettings) -> lis
     runs = {name: running_ticks(rule, tallies[rule.tag]) for name, rule in settings.running.items()}
     for name, tally in tallies.items():
         tag, users = tally.tag, settings.users.get(name, ())
-        stored_on_change = tag.between == "step" and tag.deadband is not None
-        if not users or tag.frozen_after_s is not None or stored_on_change:
+        if not users or tag.frozen_after_s is not None or tag.stands_by_design:
             continue
         if tag.between in ("line", "step", "mean"):
             found += _long_stand(tally, np.logical_or.reduce([runs[machine] for machine in users]))

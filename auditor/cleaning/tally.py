@@ -163,8 +163,7 @@ class Tally:
 
         States and values stored only when they change are equal for good reason.
         """
-        stored_on_change = self.tag.between == "step" and self.tag.deadband is not None
-        if self.tag.frozen_after_s is None or self.tag.between == "state" or stored_on_change:
+        if self.tag.frozen_after_s is None or self.tag.stands_by_design:
             return None
         return round(self.tag.frozen_after_s * MICROSECONDS)
 

@@ -165,6 +165,11 @@ class Tag:
     """Line of the plant file, for messages."""
 
     @property
+    def stands_by_design(self) -> bool:
+        """Whether its values stay equal for good reason: a state, or a value stored only when it changes."""
+        return self.between == "state" or (self.between == "step" and self.deadband is not None)
+
+    @property
     def tick_columns(self) -> tuple[str, ...]:
         """Names of its columns in the tick table: one per state name for a state, else its own name.
 

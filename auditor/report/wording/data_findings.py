@@ -184,6 +184,9 @@ def _creep(finding: Finding, plant: Plant) -> Text:
     watts, still_s = (finding.numbers.get(name, math.nan) for name in ("power_W", "standstill_s"))
     shown = f"{power(watts)} in the mean" if math.isfinite(watts) else "a flow"
     during = f" over {duration(still_s)}" if math.isfinite(still_s) else ""
+    volume_m3 = finding.numbers.get("metered_m3", math.nan)
+    if math.isfinite(volume_m3):
+        shown += f" ({significant(volume_m3, 3)}\u00a0m³ on the meter in all)"
     return (
         f"{subject(finding, plant)} goes on at standstill",
         f"Its meters show {shown} while the machine stands "
