@@ -41,15 +41,20 @@ def slow_enough(
         The loop runs over stretches that are not believed, not over samples.
     """
     believed = np.ones(values.size, dtype=np.bool_)
+    if values.size < 2:  # nothing to compare
+        return believed
     earlier = _Samples(values[:-1], instants_us[:-1])
     suspects = np.flatnonzero(~_reached(earlier, _Samples(values[1:], instants_us[1:]), rule, hold_us)) + 1
     samples = _Samples(values, instants_us)
+    # Mostly a single sample is off and the one after it is within reach again: told for all at once.
+    single = np.zeros(values.size, dtype=np.bool_)
+    single[1:-1] = _reached(samples.part(0, -2), samples.part(2, values.size), rule, hold_us)
     resumed = 0
-    for place in suspects.tolist():
+    for place, only_one in zip(suspects.tolist(), single[suspects].tolist(), strict=True):
         # A step inside a stretch that is not believed says nothing: it is not from the last believed one.
         if place <= resumed:
             continue
-        resumed = _next_believed(samples, place - 1, rule, hold_us)
+        resumed = place + 1 if only_one else _next_believed(samples, place - 1, rule, hold_us)
         believed[place:resumed] = False
     return believed
 
