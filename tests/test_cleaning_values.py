@@ -216,3 +216,18 @@ def test_nothing_is_tested_that_is_not_declared() -> None:
     table, findings = run(Setting([make_tag("warmth", "line", hold_s=120.0)]), series("warmth", values))
     assert cells(table, "warmth") == {"used": 60, "carried in": 1}
     assert not findings
+
+
+@pytest.mark.parametrize("step", [1, 7, 13, 40])
+def test_scatter_remembers_across_blocks(step: int) -> None:
+    """Spikes at many places of a noisy tag: blocks of any length find the very same ones."""
+    values = np.random.default_rng(5).normal(70.0, 1.0, 400).round(1)
+    values[40::9] += 12.0
+    rows = [Row(float(4 * place), {"x": float(value)}) for place, value in enumerate(values)]
+    tag = make_tag("x", "line", hold_s=60.0, spike=SCATTER, resolution=0.1)
+    setting = Setting([tag], hours=0.45)
+    whole, _ = run(setting, rows)
+    parts, _ = run(setting, rows, range(step, len(rows), step))
+    assert cells(whole, "x")["spike"] > 25
+    assert (whole.cells.counts == parts.cells.counts).all()
+    assert (whole.covered_s == parts.covered_s).all()

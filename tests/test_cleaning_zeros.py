@@ -66,6 +66,14 @@ def test_a_zero_of_a_machine_at_rest_is_true() -> None:
     assert not of_code(findings, FindingCode.ZERO_WHILE_RUNNING)
 
 
+def test_next_to_a_start_or_a_stop_a_zero_may_be_true() -> None:
+    """The breaker closes a minute before the first power, and opens a minute after the last."""
+    table, findings = run(setting_of("step"), rows_of(range(59, 121), opened=range(60, 120)))
+    assert np.isfinite(table.mean[:, 0]).all()
+    assert integral(table, "power") == pytest.approx((240 - 62) * 60_000.0)
+    assert not of_code(findings, FindingCode.ZERO_WHILE_RUNNING)
+
+
 def test_a_logged_zero_is_looked_for_not_a_zero_of_its_kelvin() -> None:
     """0 degC is 273.15 K; it is the zero in the file that a logger writes when it loses a signal."""
     fields = {"offset": 273.15, "not_zero_while": CLOSED}
