@@ -45,6 +45,17 @@ def test_a_reset_is_missing_not_negative_and_not_a_roll_over() -> None:
     assert np.isnan(table.mean[15:30, 0]).all()
 
 
+@pytest.mark.parametrize("reading", [12.0, 3.0])
+def test_without_a_declared_full_scale_every_fall_is_a_reset(reading: float) -> None:
+    """99 990 -> 12 kWh may be a roll-over, but who knows: missing, neither 22 nor -99 978 kWh."""
+    meter = METER | {"full_scale": None}
+    readings = quarter_hours(99_790.0, 99_990.0, reading, reading + 100.0, reading + 200.0)
+    table, findings = run(Setting([make_tag("meter", "counter", **meter)]), series("meter", readings))
+    assert integral(table, "meter") / KWH == pytest.approx(200.0 + 200.0, rel=1e-12)
+    assert np.isnan(table.mean[15:30, 0]).all()
+    assert [each.code for each in findings] == [FindingCode.COUNTER_RESET]
+
+
 @pytest.mark.parametrize("cut", range(6))
 @pytest.mark.parametrize("glitch", [4_523.0, 0.0, 99_000.0])
 def test_a_single_glitch_is_dropped_and_the_sum_kept(glitch: float, cut: int) -> None:
@@ -56,7 +67,9 @@ def test_a_single_glitch_is_dropped_and_the_sum_kept(glitch: float, cut: int) ->
     assert table.mean[15:45, 0] == pytest.approx(250.0 * KWH / 1800.0)
     assert cells(table, "meter") == {"used": 4, "spike": 1, "carried in": 1}
     assert table.cells.first["meter", 5].raw == f"{glitch:.0f}"
-    assert not findings
+    assert [(each.code, each.line, each.numbers["count"]) for each in findings] == [
+        (FindingCode.SPIKES, 4, 1)
+    ]
 
 
 @pytest.mark.parametrize("cut", range(5))
@@ -101,7 +114,7 @@ def test_a_reading_taken_late_only_merges_two_steps() -> None:
     table, findings = run(setting, series("meter", quarter_hours(0.0, 100.0, 500.0, 600.0, 700.0)))
     assert integral(table, "meter") / KWH == pytest.approx(700.0, rel=1e-12)
     assert cells(table, "meter") == {"used": 3, "spike": 1, "carried in": 1}
-    assert not findings
+    assert [each.code for each in findings] == [FindingCode.SPIKES]
 
 
 def test_whole_steps_of_a_fast_read_counter_are_no_impossible_rises() -> None:

@@ -9,10 +9,13 @@ import numpy as np
 
 from auditor.cleaning.cells import CellBook, Cells
 from auditor.cleaning.frozen import take_out_frozen
+from auditor.cleaning.impossible_zeros import take_out_zeros
 from auditor.cleaning.noise import TickSeries, tick_noise
 from auditor.cleaning.notices import findings_of
 from auditor.cleaning.rows import Rows, rows_of, rows_of_rejects, whole_stamps
+from auditor.cleaning.screen import screened
 from auditor.cleaning.tally import Tally
+from auditor.cleaning.value_notices import value_findings
 from auditor.cleaning.view import View
 from auditor.records.period import MICROSECONDS
 from auditor.records.samples import Disposition
@@ -67,14 +70,18 @@ def clean(
     tallies = _tallies(settings, grid, carry or {})
     for name, export in settings.exports.items():
         own = [tallies[tag] for tag in export.tags]
-        for rows in whole_stamps(_near_rows(exports.get(name, ()), export, book, grid, own)):
-            view = View(rows, export, [tally.tag for tally in own], grid)
+        own_tags = [tally.tag for tally in own]
+        pieces = whole_stamps(_near_rows(exports.get(name, ()), export, book, grid, own))
+        for rows, doubts in screened(pieces, own_tags, {tally.tag.name: tally.distrust_us for tally in own}):
+            view = View(rows, export, own_tags, grid)
             for tally in own:
-                tally.absorb(view, book)
+                tally.absorb(view, book, doubts.get(tally.tag.name))
     for tally in tallies.values():
         tally.finish(book)
+    zeros = take_out_zeros(tallies, book)
     frozen = take_out_frozen(tallies, settings, book)
     findings = findings_of(tallies, settings, book, frozen, grid)
+    findings += value_findings(tallies, settings, book, zeros)
     return _table(tallies, book, grid), findings
 
 

@@ -94,12 +94,7 @@ def _take_out(
         live = np.flatnonzero(sums.samples[ticks.stop :] > 0)
         ticks = slice(ticks.start, ticks.stop + (int(live[0]) if live.size else 0))
     ticks = slice(ticks.start + int(np.argmax(running[ticks])), ticks.stop)
-    covered_us = int(sums.covered_us[ticks].sum())
-    cells = int(sums.samples[ticks].sum())
-    sums.rejected_us += covered_us
-    sums.covered_us[ticks] = 0
-    sums.integral[:, ticks] = 0.0
-    sums.samples[ticks] = 0
+    cells, covered_us = sums.take_out(ticks)
     examples = tuple(example for example in (run.first, run.last) if example is not None)
     book.move(tally.tag.name, Disposition.USED, Disposition.FROZEN, cells, examples)
     start_us = grid.period.start_us + ticks.start * tick_us

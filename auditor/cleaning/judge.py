@@ -41,12 +41,14 @@ def judge(
     tag: Tag,
     distrust_us: tuple[tuple[int, int], ...],
     since_us: int | None,
+    doubts: NDArray[np.int8] | None = None,
 ) -> Judged:
     """Judge the numbers of one tag, row ``row_of`` of the view.
 
     An empty cell is no event: in a table of slow and fast signals it only says that this one was not due.
     A cell that held something unusable is an event, and ends the stretch of the value before it. Order of
-    the tests: outside the period, distrusted, out of range, repeated.
+    the tests: outside the period, distrusted, out of range, spoken against by its neighbours (``doubts``),
+    repeated.
 
     Rows before ``since_us`` belong to what the period before has dealt with, and are outside.
     """
@@ -58,7 +60,9 @@ def judge(
     if tag.cut_off is not None and tag.between != "counter":
         numbers[np.abs(numbers) < tag.cut_off] = 0.0
     known_rows = 0 if since_us is None else int(np.searchsorted(view.rows.instants_us, since_us, side="left"))
-    if view.repeats is None and windows is None and out is None and not known_rows and finite.all():
+    if not (windows is not None or out is not None or doubts is not None or known_rows) and (
+        view.repeats is None and finite.all()
+    ):
         codes = None
         if inside is not None:
             codes = np.where(inside, Disposition.USED, Disposition.OUTSIDE_PERIOD).astype(np.int8)
@@ -71,6 +75,10 @@ def judge(
     if windows is not None:
         codes[windows & finite] = Disposition.DISTRUSTED
         good &= ~windows
+    if doubts is not None:
+        doubted = good & (doubts > 0)
+        codes[doubted] = doubts[doubted]
+        good &= ~doubted
     good[:known_rows] = False
     event = finite.copy()
     event[view.rows.broken[row_of]] = True

@@ -35,7 +35,7 @@ def findings_of(
     found: list[Finding] = []
     for export in settings.exports:
         own = [tally for tally in tallies.values() if tally.tag.export == export]
-        found += _few(_gap_findings(export, own, grid))
+        found += few(_gap_findings(export, own, grid))
     for stretch in frozen:
         found.append(_frozen_finding(stretch, tallies[stretch.tag], settings))
     for code, kind in (
@@ -43,12 +43,12 @@ def findings_of(
         (FindingCode.STATUS_WORDS, Disposition.STATUS_WORD),
     ):
         found += (
-            _cell_finding(code, kind, tally, book) for tally in tallies.values() if _count(tally, kind, book)
+            cell_finding(code, kind, tally, book) for tally in tallies.values() if count_of(tally, kind, book)
         )
     for tally in tallies.values():
-        found += _few(_reset_findings(tally, book))
+        found += few(_reset_findings(tally, book))
     for tally in tallies.values():
-        found += _few(_conflict_findings(tally, book))
+        found += few(_conflict_findings(tally, book))
     found += (_distrust_finding(entry, tallies, grid) for entry in settings.distrust if _inside(entry, grid))
     return tuple(found)
 
@@ -124,11 +124,13 @@ def _frozen_finding(stretch: FrozenStretch, tally: Tally, settings: CleaningSett
     )
 
 
-def _count(tally: Tally, kind: Disposition, book: CellBook) -> int:
+def count_of(tally: Tally, kind: Disposition, book: CellBook) -> int:
+    """Return how many cells of a tag ended in a disposition."""
     return int(book.counts[book.place[tally.tag.name], kind])
 
 
-def _cell_finding(code: FindingCode, kind: Disposition, tally: Tally, book: CellBook) -> Finding:
+def cell_finding(code: FindingCode, kind: Disposition, tally: Tally, book: CellBook) -> Finding:
+    """Return the finding of all cells of a tag that ended in one disposition."""
     name = tally.tag.name
     first, last = book.first.get((name, kind)), book.last.get((name, kind))
     words = {} if first is None or last is None else {"first": first.raw, "last": last.raw}
@@ -142,7 +144,7 @@ def _cell_finding(code: FindingCode, kind: Disposition, tally: Tally, book: Cell
         tag=name,
         start_us=None if first is None else first.instant_us,
         end_us=None if last is None or last.instant_us is None else last.instant_us + 1,
-        numbers={"count": _count(tally, kind, book)},
+        numbers={"count": count_of(tally, kind, book)},
         words=words,
     )
 
@@ -217,7 +219,7 @@ def _distrust_finding(entry: Distrust, tallies: Mapping[str, Tally], grid: Grid)
     )
 
 
-def _few(findings: Iterable[Finding]) -> list[Finding]:
+def few(findings: Iterable[Finding]) -> list[Finding]:
     """Keep the longest of many like findings, and sum up the rest in one."""
     given = list(findings)
     if len(given) <= MOST_ALIKE:

@@ -131,12 +131,13 @@ def whole_stamps(pieces: Iterable[Rows]) -> Iterator[Rows]:
         if torn:
             yield replace(waiting.part(0, torn), next_us=first_us)
         rest = waiting.part(torn, waiting.instants_us.size)
-        waiting = _joined(rest, piece) if rest.instants_us.size else piece
+        waiting = joined(rest, piece) if rest.instants_us.size else piece
     if waiting is not None:
         yield waiting
 
 
-def _joined(first: Rows, second: Rows) -> Rows:
+def joined(first: Rows, second: Rows) -> Rows:
+    """Return the rows of both, in this order."""
     shift = first.instants_us.size
     return Rows(
         instants_us=np.concatenate((first.instants_us, second.instants_us)),

@@ -142,6 +142,16 @@ class Sums:
         good = np.ones(chosen.size, dtype=np.bool_) if chain.good is None else chain.good[chosen]
         return [Isolated(chain.instants_us[chosen], chain.values[chosen], good)]
 
+    def take_out(self, ticks: slice | NDArray[np.bool_]) -> tuple[int, int]:
+        """Move ticks from covered to rejected; returns their samples and the time they covered [us]."""
+        covered_us = int(self.covered_us[ticks].sum())
+        samples = int(self.samples[ticks].sum())
+        self.rejected_us += covered_us
+        self.covered_us[ticks] = 0
+        self.integral[:, ticks] = 0.0
+        self.samples[ticks] = 0
+        return samples, covered_us
+
     def reject(self, start_us: NDArray[np.int64], end_us: NDArray[np.int64]) -> None:
         """Count stretches as rejected, as far as they lie in the period."""
         period = self.grid.period

@@ -12,7 +12,9 @@ from auditor.cleaning.conflicts import Conflicts, conflicts_of
 from auditor.cleaning.counter_sums import CounterSums
 from auditor.cleaning.equal_runs import EqualRun, extend_runs
 from auditor.cleaning.events import Event, EventLog
+from auditor.cleaning.impossible_zeros import zero_marks
 from auditor.cleaning.judge import Judged, judge, rows_where, stamp_shift_us
+from auditor.cleaning.range_ends import range_end_marks
 from auditor.cleaning.spans import cut
 from auditor.cleaning.sums import Isolated, Sums
 from auditor.records.period import MICROSECONDS
@@ -44,6 +46,8 @@ class Tally:
         self.sums = Sums(tag, grid)
         self.counter = CounterSums(self.sums, self.distrust_us) if tag.between == "counter" else None
         self.log = EventLog(grid, self.sums.hold_us)
+        self.zeros = zero_marks(tag, grid)
+        self.range_ends = range_end_marks(tag, grid)
         self.conflicts: list[Conflicts] = []
         self.runs: list[EqualRun] = []
         """Runs of equal values long enough to be suspicious."""
@@ -66,9 +70,9 @@ class Tally:
             self._last_reading = (carry.instant_us, carry.value)
             self.counter.add(Cells(instant, number, number, place, np.zeros(1, dtype=np.int64)))
 
-    def absorb(self, view: View, book: CellBook) -> None:
-        """Take a piece of the export."""
-        judged = judge(view, self.row_of, self.tag, self.distrust_us, self._carried_us)
+    def absorb(self, view: View, book: CellBook, doubts: NDArray[np.int8] | None = None) -> None:
+        """Take a piece of the export; ``doubts`` are the samples that their neighbours speak against."""
+        judged = judge(view, self.row_of, self.tag, self.distrust_us, self._carried_us, doubts)
         cells = self._cells(view)
         self._enter(view, judged, cells, book)
         if judged.resolved is not None:
@@ -159,8 +163,7 @@ class Tally:
 
         States and values stored only when they change are equal for good reason.
         """
-        stored_on_change = self.tag.between == "step" and self.tag.deadband is not None
-        if self.tag.frozen_after_s is None or self.tag.between == "state" or stored_on_change:
+        if self.tag.frozen_after_s is None or self.tag.stands_by_design:
             return None
         return round(self.tag.frozen_after_s * MICROSECONDS)
 
@@ -235,6 +238,11 @@ class Tally:
             numbers[0] = before.value
             values = numbers
         chain = Chain(events.instants_us, values, self._goodness(judged, count))
+        for marks in (self.zeros, self.range_ends):
+            if marks is not None:
+                cells = self._cells(view)
+                own = cells if judged.event is None else cells.take(judged.event)
+                marks.note(chain, own, 0 if before is None else 1, book)
         self._isolated += self.sums.isolated(chain, leads=before is None)
         chain, spans = self._distrusted(chain, view.spans(events, self.sums.hold_us))
         covered = self.sums.add_chain(chain, spans)
@@ -304,6 +312,9 @@ class Tally:
 
     def _close(self, last: Event, book: CellBook) -> None:
         """Fill the stretch after the last event, as far as its hold reaches."""
+        for marks in (self.zeros, self.range_ends):
+            if marks is not None and last.good:
+                marks.close(last.instant_us, last.value)
         instants = np.array([last.instant_us], dtype=np.int64)
         hold_end = instants + self.sums.hold_us
         if self.counter is not None:

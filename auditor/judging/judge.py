@@ -27,10 +27,12 @@ if TYPE_CHECKING:
 
 _TIERS = (
     (FindingCode.IMPOSSIBLE_CLUSTER, FindingCode.OPEN_BALANCE),
-    (FindingCode.UNIT_SUSPECTED, FindingCode.FROZEN),
+    (FindingCode.UNIT_SUSPECTED, FindingCode.SWAPPED_PAIR, FindingCode.FROZEN),
     (FindingCode.CLOCK_STEP, FindingCode.CLOCK_OFFSET, FindingCode.STEP_IN_FIGURE),
     (FindingCode.WITHHELD_FIGURE, FindingCode.MISSING_EXPORT, FindingCode.GAP, FindingCode.COUNTER_RESET),
     (FindingCode.OUT_OF_RANGE, FindingCode.CONFLICT, FindingCode.CREEP_AT_STANDSTILL),
+    (FindingCode.ZERO_WHILE_RUNNING, FindingCode.AT_RANGE_END, FindingCode.STOOD_LONG),
+    (FindingCode.SPIKES, FindingCode.CHANGED_TOO_FAST, FindingCode.COARSE_STEPS),
     (FindingCode.HEATING_VALUE_CHANGED, FindingCode.REPEATED_HOUR, FindingCode.REJECTED_LINES),
 )
 """Findings of an earlier tier stand first; within a tier the larger energy; anything else last."""

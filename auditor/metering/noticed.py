@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from auditor.metering.heating_values import valid_entry
 from auditor.metering.inputs import counted
+from auditor.metering.swapped import swapped_pairs
 from auditor.metering.ways import made_of
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.machines import GasVolume, LiquidFuel, Role
@@ -41,8 +42,9 @@ def findings_of(
     findings: list[Finding] = []
     for stream in settings.streams().values():
         findings.extend(_refused(stream, table, metered, ticks, settings))
+        findings.extend(swapped_pairs(stream, table))
         if made_of(stream) is None and stream.role not in _TRUE_AT_STANDSTILL:
-            findings.extend(_creep(stream, table))
+            findings.extend(_creep(stream, table, ticks))
     for name, fuel in settings.fuels.items():
         burning = [stream for stream in settings.streams().values() if _burns(stream, name)]
         if burning:
@@ -93,13 +95,17 @@ def _out_of_range(
     )
 
 
-def _creep(stream: Stream, table: PowerTable) -> Iterator[Finding]:
+def _creep(stream: Stream, table: PowerTable, ticks: TickTable) -> Iterator[Finding]:
     index = table.streams.index(stream.key)
     still = table.known[:, index] & (table.running[stream.machine] == 0.0)
     mean_W, usual_W = table.standstill_W[stream.key], _usual_W(stream, table)
     if not abs(mean_W) > CREEP_SHARE * usual_W:
         return
     standstill_s = float(np.count_nonzero(still) * table.grid.tick_s)
+    numbers = {"power_W": mean_W, "standstill_s": standstill_s, "running_power_W": usual_W}
+    if isinstance(stream.way, GasVolume):
+        flow_m3_per_s = ticks.mean[still, ticks.column(stream.way.volume)]
+        numbers["metered_m3"] = float(np.mean(flow_m3_per_s)) * standstill_s
     yield Finding(
         FindingCode.CREEP_AT_STANDSTILL,
         machine=stream.machine,
@@ -107,7 +113,7 @@ def _creep(stream: Stream, table: PowerTable) -> Iterator[Finding]:
         start_us=table.grid.period.start_us,
         end_us=table.grid.period.end_us,
         energy_J=abs(mean_W) * standstill_s,
-        numbers={"power_W": mean_W, "standstill_s": standstill_s, "running_power_W": usual_W},
+        numbers=numbers,
     )
 
 

@@ -45,8 +45,39 @@ class NumberTag(Part):
     )
 
 
-class InstantTag(NumberTag):
+class EvidencePart(Part):
+    """What another tag must show for a zero not to be believed."""
+
+    either: ClassVar[tuple[tuple[str, str], ...]] = (("above", "is"),)
+
+    tag: OneLine = required("the other tag", "breaker")
+    above: OwnUnitValue | None = optional("it speaks against a zero while it is above this value", "20 kW")
+    is_: OneLine | None = optional("it speaks against a zero while it is in this state", "closed", alias="is")
+
+
+class PlainTag(NumberTag):
+    """A tag of a level, a rate or an amount, not of the reading of a counter."""
+
+    not_zero_while: EvidencePart | None = optional(
+        "when an exact zero cannot be true: such zeros, and the ticks they touch, count as missing",
+        {"tag": "breaker", "is": "closed"},
+    )
+
+
+class InstantTag(PlainTag):
     """A tag whose number is a level or a rate, not an amount."""
+
+    spike: OwnUnitValue | None = optional(
+        'how far one or two samples may stand from their neighbours: a size, or "6 times its scatter"', "5 K"
+    )
+    change_at_most: OneLine | None = optional(
+        "largest believable change within the time it names, and in proportion over a longer one", "5 K/min"
+    )
+    saturates_at: list[float] | None = optional(
+        "value at which the reading stays when the quantity goes on: the upper end, or the lower and the "
+        "upper end, in the tag's own unit",
+        [700],
+    )
 
     frozen_after: Duration | None = optional(
         "time without any change after which the tag counts as frozen while the plant runs", "2 h"
@@ -84,7 +115,7 @@ class MeanTag(InstantTag):
     hold: Duration = optional(_FULL_STRETCH, "15 min", default="1 h")
 
 
-class AmountTag(NumberTag):
+class AmountTag(PlainTag):
     """The value is the amount in the stretch that its stamp marks."""
 
     between: Literal["amount"] = required(_BETWEEN, "amount")

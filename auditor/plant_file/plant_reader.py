@@ -8,6 +8,7 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any, TypeVar
 
+from auditor.plant_file.evidence import with_evidence
 from auditor.plant_file.faults import FaultBook
 from auditor.plant_file.key_lines import KeyLines
 from auditor.plant_file.part_reader import read_part
@@ -130,6 +131,7 @@ def _resolve(part: PlantPart, path: Path, text: str, book: FaultBook) -> Plant:
         machines=part.machines or {},
     )
     machines = resolve_machines(declared, book)
+    tags = with_evidence(export_parts, declared, book)
     distrust = resolve_distrust(part.distrust, zone, tags, book)
     book.close()
     used = {

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from auditor.plant_file.ceiling_premises import check_premises
+from auditor.plant_file.evidence import number_tag, running_rule
 from auditor.plant_file.faults import FaultBook, choices
 from auditor.plant_file.key_lines import KeyPath
 from auditor.plant_file.machine_parts import (
@@ -15,12 +16,11 @@ from auditor.plant_file.machine_parts import (
     ReservoirCeiling,
     SharedStream,
 )
-from auditor.plant_file.references import Declared, change_of, find, level_of
+from auditor.plant_file.references import Declared, change_of
 from auditor.plant_file.resolve_streams import check_share_cycles, resolve_stream
 from auditor.plant_file.stream_place import Place
 from auditor.records.kinds import KINDS, Kind
 from auditor.records.machines import Ceiling, CeilingKind, Machine, Role, Running, Steady, Stream
-from auditor.records.plant import Tag
 
 
 def resolve_machines(declared: Declared, book: FaultBook) -> dict[str, Machine]:
@@ -81,28 +81,14 @@ def _running(part: MachinePart, declared: Declared, path: KeyPath, book: FaultBo
     rule, place = part.running, (*path, "running")
     if rule is None or rule.tag is None:
         return None
-    if rule.above is not None:
-        tag = _number_tag(rule.tag, 'write is = "closed" in place of above', declared, (*place, "tag"), book)
-        above = None if tag is None else book.attempt((*place, "above"), level_of, rule.above, tag)
-        return Running(rule.tag, above, None)
-    tag = find("tag", rule.tag, declared.tags, (*place, "tag"), book)
-    if tag is None or rule.is_ is None:
-        return None
-    if tag.states is None:
-        book.add(
-            (*place, "is"), f'tag "{rule.tag}" is no state', 'write above = "20 kW", or name a state tag'
-        )
-    elif rule.is_ not in tag.states.values():
-        states = dict.fromkeys(tag.states.values())
-        book.add((*place, "is"), f'tag "{rule.tag}" has no state "{rule.is_}"', choices(rule.is_, states))
-    return Running(rule.tag, None, rule.is_)
+    return running_rule(rule, declared, place, book)
 
 
 def _steady(part: MachinePart, declared: Declared, path: KeyPath, book: FaultBook) -> Steady | None:
     rule, place = part.steady, (*path, "steady")
     if rule is None:
         return None
-    tag = _number_tag(rule.tag, "name a tag of power or flow", declared, (*place, "tag"), book)
+    tag = number_tag(rule.tag, "name a tag of power or flow", declared, (*place, "tag"), book)
     interval_s = None if declared.site is None else declared.site.interval_s
     if rule.within is not None and interval_s is not None and rule.within.value < interval_s:
         book.add(
@@ -114,16 +100,6 @@ def _steady(part: MachinePart, declared: Declared, path: KeyPath, book: FaultBoo
         return None
     change = book.attempt((*place, "change_below"), change_of, rule.change_below, tag)
     return None if change is None else Steady(rule.tag, change, rule.within.value)
-
-
-def _number_tag(
-    name: str | None, instead: str, declared: Declared, path: KeyPath, book: FaultBook
-) -> Tag | None:
-    tag = find("tag", name, declared.tags, path, book)
-    if tag is not None and tag.states is not None:
-        book.add(path, f'tag "{name}" is a state, not a number', instead)
-        return None
-    return tag
 
 
 def _check_roles(kind: Kind, part: MachinePart, path: KeyPath, book: FaultBook) -> None:

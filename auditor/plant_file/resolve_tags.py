@@ -29,6 +29,7 @@ from auditor.plant_file.quantities import (
     uncertainty,
     unit_conversion,
 )
+from auditor.plant_file.value_tests import value_tests
 from auditor.plant_file.written import shown
 from auditor.records.plant import Tag
 from auditor.records.uncertain import Uncertainty
@@ -111,6 +112,7 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
         frozen_after_s=part.frozen_after.value
         if isinstance(part, InstantTag) and part.frozen_after
         else None,
+        **value_tests(part, own, path, book),
         cut_off=reader.size("cut_off", part.cut_off) if isinstance(part, InstantTag) else None,
         pressure=part.pressure if isinstance(part, InstantTag) else None,
         basis=part.basis if isinstance(part, InstantTag) else None,

@@ -34,6 +34,13 @@ class FindingCode(StrEnum):
     HEATING_VALUE_CHANGED = "heating value changed"
     CREEP_AT_STANDSTILL = "creep at standstill"
     WITHHELD_FIGURE = "figure withheld"
+    SPIKES = "spikes"
+    CHANGED_TOO_FAST = "changed too fast"
+    ZERO_WHILE_RUNNING = "zero while running"
+    AT_RANGE_END = "at the end of its range"
+    STOOD_LONG = "stood still for unusually long"
+    COARSE_STEPS = "coarse counter steps"
+    SWAPPED_PAIR = "pair perhaps swapped"
 
 
 _NO_NUMBERS: Mapping[str, float] = MappingProxyType({})

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Literal
 if TYPE_CHECKING:
     from pathlib import Path
 
-    from auditor.records.machines import Machine
+    from auditor.records.machines import Machine, Running
     from auditor.records.uncertain import Assumed, Uncertainty
 
 Between = Literal["step", "line", "mean", "amount", "counter", "state"]
@@ -94,6 +94,25 @@ class Export:
 
 
 @dataclass(frozen=True)
+class SpikeRule:
+    """How far a sample may stand from its neighbours; exactly one of the two is given."""
+
+    size: float | None
+    """SI."""
+    times_scatter: float | None
+    """In multiples of the robust standard deviation of the samples before [1]."""
+
+
+@dataclass(frozen=True)
+class ChangeRule:
+    """How much a value may change: ``size`` within ``within_s``, and in proportion over a longer time."""
+
+    size: float
+    """SI."""
+    within_s: float
+
+
+@dataclass(frozen=True)
 class Tag:
     """One logged signal. Raw numbers become SI by ``scale * raw + offset``; limits below are SI already.
 
@@ -130,6 +149,12 @@ class Tag:
     believable: tuple[float, float] | None = None
     """Believable range, closed, in SI."""
     frozen_after_s: float | None = None
+    spike: SpikeRule | None = None
+    change_at_most: ChangeRule | None = None
+    saturates_at: tuple[float | None, float | None] | None = None
+    """Readings at which the instrument stays when the quantity goes on, below and above, SI."""
+    not_zero_while: Running | None = None
+    """Evidence against which an exact zero is not believed."""
     cut_off: float | None = None
     """Magnitude below which the value counts as zero (low-flow cut-off)."""
     pressure: Literal["gauge", "absolute"] | None = None
@@ -138,6 +163,11 @@ class Tag:
     """Raw text to state name, for ``between = "state"``."""
     line: int = 0
     """Line of the plant file, for messages."""
+
+    @property
+    def stands_by_design(self) -> bool:
+        """Whether its values stay equal for good reason: a state, or a value stored only when it changes."""
+        return self.between == "state" or (self.between == "step" and self.deadband is not None)
 
     @property
     def tick_columns(self) -> tuple[str, ...]:

@@ -31,6 +31,8 @@ class Disposition(IntEnum):
     DISTRUSTED = 11
     OUTSIDE_PERIOD = 12
     CARRIED_IN = 13
+    CHANGED_TOO_FAST = 14
+    ZERO_WHILE_RUNNING = 15
 
     @property
     def word(self) -> str:

@@ -11,7 +11,7 @@ from auditor.report import numbers
 from auditor.report.clock import Clock
 from auditor.report.elements import Table
 from auditor.report.wording import names
-from auditor.report.wording.ledgers import DISPOSITIONS, SECONDS
+from auditor.report.wording.ledgers import DISPOSITIONS, SECONDS, standing
 
 
 def cell_table(result: AuditResult) -> Table:
@@ -65,6 +65,7 @@ def second_table(result: AuditResult) -> Table:
             *(numbers.to_places(us / 3.6e9, 2) for us in seconds.microseconds[index].tolist()),
             numbers.to_places(seconds.microseconds[index].sum() / 3.6e9, 2),
             numbers.percent(float(seconds.microseconds[index, SecondKind.COVERED] / length_us)),
+            standing(result.plant.tags[tag]),
         )
         for index, tag in enumerate(seconds.tags)
     )
@@ -76,11 +77,13 @@ def second_table(result: AuditResult) -> Table:
     )
     return Table(
         "Time of the period by tag, in hours",
-        ("Tag", *(names.sentence(kind.word) for kind in SecondKind), "Sum", "Covered"),
+        ("Tag", *(names.sentence(kind.word) for kind in SecondKind), "Sum", "Covered", "Standing still"),
         rows,
         numeric=tuple(range(1, len(SecondKind) + 3)),
         note=f"{said} ({numbers.to_places(result.period.seconds / 3600.0, 2)} h). "
-        + " ".join(f"{names.sentence(kind.word)}: {SECONDS[kind]}." for kind in SecondKind),
+        + " ".join(f"{names.sentence(kind.word)}: {SECONDS[kind]}." for kind in SecondKind)
+        + " Standing still: after how long a value that does not move while its machine runs is rejected; "
+        "not tested without frozen_after, nor where a state or a value stored on change may stand.",
         code=(0,),
     )
 

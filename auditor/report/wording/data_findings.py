@@ -63,7 +63,7 @@ def subject(finding: Finding, plant: Plant) -> str:
     return f"the export {finding.export}" if finding.export is not None else "a tag"
 
 
-def _value(finding: Finding, plant: Plant, si: float) -> str:
+def value(finding: Finding, plant: Plant, si: float) -> str:
     """Write a value in the unit of the finding's tag, four digits."""
     declared = plant.tags.get(finding.tag or "")
     if declared is None or not math.isfinite(si):
@@ -92,7 +92,7 @@ def _gap(finding: Finding, plant: Plant) -> Text:
 
 
 def _frozen(finding: Finding, plant: Plant) -> Text:
-    at = _value(finding, plant, finding.numbers.get("value_SI", math.nan))
+    at = value(finding, plant, finding.numbers.get("value_SI", math.nan))
     return (
         f"{subject(finding, plant)} stood still",
         f"It showed one and the same value{f', {at},' if at else ''} {when(finding, plant)} "
@@ -184,6 +184,9 @@ def _creep(finding: Finding, plant: Plant) -> Text:
     watts, still_s = (finding.numbers.get(name, math.nan) for name in ("power_W", "standstill_s"))
     shown = f"{power(watts)} in the mean" if math.isfinite(watts) else "a flow"
     during = f" over {duration(still_s)}" if math.isfinite(still_s) else ""
+    volume_m3 = finding.numbers.get("metered_m3", math.nan)
+    if math.isfinite(volume_m3):
+        shown += f" ({significant(volume_m3, 3)}\u00a0m³ on the meter in all)"
     return (
         f"{subject(finding, plant)} goes on at standstill",
         f"Its meters show {shown} while the machine stands "

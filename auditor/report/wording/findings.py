@@ -9,7 +9,7 @@ from typing import NamedTuple
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Plant
 from auditor.report.numbers import count
-from auditor.report.wording import data_findings, figure_findings, file_findings
+from auditor.report.wording import data_findings, figure_findings, file_findings, value_findings
 from auditor.report.wording.names import listing, sentence, tag
 
 
@@ -25,7 +25,7 @@ class FindingText(NamedTuple):
 _Writer = Callable[[Finding, Plant], tuple[str, str, str]]
 
 WRITERS: Mapping[FindingCode, _Writer] = MappingProxyType(
-    data_findings.WRITERS | file_findings.WRITERS | figure_findings.WRITERS
+    data_findings.WRITERS | value_findings.WRITERS | file_findings.WRITERS | figure_findings.WRITERS
 )
 
 _TAKE_NOTE_ONLY = frozenset(

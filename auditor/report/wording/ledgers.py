@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from auditor.records.plant import Tag
 from auditor.records.samples import Disposition
 from auditor.records.ticks import SecondKind
+from auditor.report.numbers import duration
 
 DISPOSITIONS: dict[Disposition, str] = {
     Disposition.USED: "entered the means that every figure is made of",
@@ -20,6 +22,8 @@ DISPOSITIONS: dict[Disposition, str] = {
     Disposition.DISTRUSTED: "excluded by a person in the plant file",
     Disposition.OUTSIDE_PERIOD: "before or after the period of this statement",
     Disposition.CARRIED_IN: "before the period, but still holding when it began",
+    Disposition.CHANGED_TOO_FAST: "farther from the last believed reading than the plant file lets it change",
+    Disposition.ZERO_WHILE_RUNNING: "zero, or in one tick with a zero, while another tag speaks against it",
 }
 
 SECONDS: dict[SecondKind, str] = {
@@ -28,3 +32,12 @@ SECONDS: dict[SecondKind, str] = {
     SecondKind.REJECTED: "logged, but the reading was rejected",
     SecondKind.NEVER_LOGGED: "before the first or after the last reading of the tag",
 }
+
+
+def standing(tag: Tag) -> str:
+    """Say whether a tag is tested for standing still while its machine runs."""
+    if tag.stands_by_design:
+        return "not tested: it may"
+    if tag.frozen_after_s is None:
+        return "not tested"
+    return f"tested, {duration(tag.frozen_after_s)}"
