@@ -10,6 +10,7 @@ import numpy as np
 
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.recogniser import Meters, meter_questions
 from auditor.judging.steps import steps_in_figures
 from auditor.judging.units import unit_suspects
 from auditor.judging.verdicts import judge_machine
@@ -45,11 +46,12 @@ class JudgingSettings:
     machines: Mapping[str, Machine]
     tags: Mapping[str, Tag]
     interval_coverage: float
+    meters: Meters
 
     @classmethod
     def from_plant(cls, plant: Plant) -> JudgingSettings:
         """Take the slice from a plant."""
-        return cls(plant.machines, plant.tags, plant.rules.interval_coverage)
+        return cls(plant.machines, plant.tags, plant.rules.interval_coverage, Meters.from_plant(plant))
 
 
 @dataclass(frozen=True)
@@ -84,6 +86,10 @@ def judge(
     """
     findings = [_sized(finding, powers, ticks) for finding in earlier]
     findings += unit_suspects(findings, ticks, settings.tags)
+    findings += [
+        _sized(question, powers, ticks)
+        for question in meter_questions(settings.meters, ticks, powers, balances)
+    ]
     judgements: dict[str, MachineJudgement] = {}
     for name, balance in balances.items():
         machine = settings.machines[name]

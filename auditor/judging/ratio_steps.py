@@ -1,0 +1,142 @@
+"""Steps in the ratio of two signals: when, from what to what, and how well that is known.
+
+Two signals of one machine rise and fall with its load together, and so does their ratio a little. A step is
+therefore sized at equal load: only intervals are compared in which one of the two signals was as large
+before the step as after it. That one is the signal which did not change its meaning.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from auditor.judging.steps import largest_steps
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    Floats = NDArray[np.float64]
+
+SIDE_US = 48 * 3_600_000_000
+"""Record compared on each side of a step."""
+_BLOCK_US = 6 * 3_600_000_000
+"""Readings within a quarter of a day share weather and load: each such block counts as one."""
+_LEAST_BLOCKS = 4
+"""Fewest blocks on each side."""
+_CLASSES = 12
+"""Classes of load in which intervals are compared."""
+_LEAST_MATCHED = 12
+"""Fewest intervals of equal load on each side (three hours of quarter-hours)."""
+_T_95 = 2.45
+"""Student's t for 95 % and six degrees of freedom, about what twice four blocks leave."""
+
+
+@dataclass(frozen=True)
+class RatioStep:
+    """A step in the ratio of two signals."""
+
+    index: int
+    """First point of the new level."""
+    before: float
+    """Median of the ratio before it [1]."""
+    after: float
+    factor: float
+    """By which the ratio changed at equal load [1]."""
+    factor_U: float
+    """Expanded uncertainty of ``factor`` from scatter alone [1]."""
+
+
+def ratio_steps(times_us: NDArray[np.int64], top: Floats, bottom: Floats) -> list[RatioStep]:
+    """Find the steps of ``top / bottom``, two positive series of one machine; in order of time.
+
+    Returns
+    -------
+    list of RatioStep
+        Those whose size at equal load is known; a change of both signals together is none.
+    """
+    found = []
+    ratio = top / bottom
+    for step in largest_steps(times_us, ratio):
+        sized = [
+            of_load
+            for load in (bottom, top)
+            if (of_load := _at_equal_load(times_us, np.log(ratio), np.log(load), step.index)) is not None
+        ]
+        if sized:
+            size, U, _ = max(sized, key=lambda each: each[2])
+            factor = math.exp(size)
+            found.append(RatioStep(step.index, step.before, step.after, factor, factor * U))
+    return found
+
+
+def sides(times_us: NDArray[np.int64], index: int) -> tuple[slice, slice]:
+    """Points that are compared before and after a step."""
+    first, last = np.searchsorted(times_us, (times_us[index] - SIDE_US, times_us[index] + SIDE_US))
+    return slice(int(first), index), slice(index, int(last))
+
+
+def level_change(times_us: NDArray[np.int64], values: Floats, index: int) -> tuple[float, float, float]:
+    """Median before and after a point, and the expanded uncertainty of their difference; NaN if unknown."""
+    left, right = sides(times_us, index)
+    before, after = float(np.median(values[left])), float(np.median(values[right]))
+    return (
+        before,
+        after,
+        _U((times_us[left], values[left] - before), (times_us[right], values[right] - after)),
+    )
+
+
+def _at_equal_load(
+    times_us: NDArray[np.int64], ratio: Floats, load: Floats, index: int
+) -> tuple[float, float, int] | None:
+    """Change of the logarithm of a ratio at equal load, its U, and the number of intervals matched."""
+    left, right = sides(times_us, index)
+    edges = np.unique(np.quantile(np.concatenate((load[left], load[right])), np.linspace(0, 1, _CLASSES + 1)))
+    classes = np.searchsorted(edges[1:-1], load, side="right")
+    changes, weights = np.full(_CLASSES, np.nan), np.zeros(_CLASSES)
+    residual = np.full(ratio.shape, np.nan)
+    for load_class in range(_CLASSES):
+        mine = classes == load_class
+        before, after = np.flatnonzero(mine[left]) + left.start, np.flatnonzero(mine[right]) + right.start
+        if not before.size or not after.size:
+            continue
+        middle = np.median(ratio[before]), np.median(ratio[after])
+        residual[before], residual[after] = ratio[before] - middle[0], ratio[after] - middle[1]
+        changes[load_class] = middle[1] - middle[0]
+        weights[load_class] = min(before.size, after.size)
+    matched = int(weights.sum())
+    if matched < _LEAST_MATCHED:
+        return None
+    size = float(np.nansum(changes * weights) / matched)
+    parts = []
+    for side in (left, right):
+        known = np.isfinite(residual[side])
+        parts.append((times_us[side][known], residual[side][known]))
+    U = _U(parts[0], parts[1])
+    # What differs from class to class is no scatter of readings: the size is not known better than that.
+    spread = float(np.sqrt(np.nansum(weights * (changes - size) ** 2) / matched))
+    U = math.hypot(U, 2.0 * spread / math.sqrt(max(1, int(np.count_nonzero(weights)))))
+    return (size, U, matched) if math.isfinite(U) else None
+
+
+def _U(before: tuple[NDArray[np.int64], Floats], after: tuple[NDArray[np.int64], Floats]) -> float:
+    """Give the expanded uncertainty of the difference of two levels, from the means of blocks of time.
+
+    Source
+    ------
+    JCGM 100:2008, 4.2.3 (scatter of means) and G.3 (Student's t), with blocks in place of readings because
+    neighbouring readings are not independent.
+    """
+    variance = 0.0
+    for times_us, residual in (before, after):
+        blocks = np.unique(times_us // _BLOCK_US, return_inverse=True)[1]
+        counts = np.bincount(blocks) if blocks.size else np.zeros(0)
+        if counts.size < _LEAST_BLOCKS:
+            return math.nan
+        means = np.bincount(blocks, weights=residual) / counts
+        scatter = float(np.average((means - np.average(means, weights=counts)) ** 2, weights=counts))
+        variance += scatter / (counts.size - 1)
+    return _T_95 * math.sqrt(variance)
