@@ -242,6 +242,36 @@ def test_a_machine_that_truly_idles_is_not_asked_about(tmp_path: Path) -> None:
     assert questions(audited(tmp_path, PLANT, columns), "nameplate") == []
 
 
+@pytest.mark.parametrize(
+    ("from_day", "factor", "cause"),
+    [(20, 1000.0, "decimal place"), (0, 1000.0, "decimal place"), (20, 3.6, "factor 3.6")],
+)
+def test_readings_out_of_range_that_a_ratio_makes_usual(
+    tmp_path: Path, from_day: int, factor: float, cause: str
+) -> None:
+    """Watts in a column of kilowatts leave the range; so says the question, and they stay rejected."""
+    plant = PLANT.replace('column = "Q", unit = "kW",', 'column = "Q", unit = "kW", range = [0, 1300],')
+    columns = month(13)
+    odd = np.arange(SECONDS.size) // 96 >= from_day
+    columns["Q"] = np.where(odd, factor * columns["Q"], columns["Q"])
+    (finding,) = questions(audited(tmp_path, plant, columns), "range")
+    assert finding.tag == "panel" and finding.numbers["count"] == np.count_nonzero(
+        odd & (columns["Q"] > 1300)
+    )
+    assert cause in finding.words["candidates"]
+
+
+def test_spikes_and_saturation_out_of_range_are_no_units(tmp_path: Path) -> None:
+    """Scattered readings ten times too high are spikes; the same number all day is a meter at its end."""
+    plant = PLANT.replace('column = "Q", unit = "kW",', 'column = "Q", unit = "kW", range = [0, 1300],')
+    spiky, stuck = month(14), month(14)
+    spiky["Q"] = np.where(np.arange(SECONDS.size) % 97 == 5, 10.0 * spiky["Q"], spiky["Q"])
+    stuck["Q"] = np.where(np.arange(SECONDS.size) // 96 == 20, 9999.0, stuck["Q"])
+    for name, columns in (("spiky", spiky), ("stuck", stuck)):
+        (tmp_path / name).mkdir()
+        assert questions(audited(tmp_path / name, plant, columns), "range") == []
+
+
 def questions(result: AuditResult, evidence: str) -> list[Finding]:
     """Questions of an audit that came from one comparison."""
     return [

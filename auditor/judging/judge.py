@@ -10,6 +10,7 @@ import numpy as np
 
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.range_units import range_questions
 from auditor.judging.recogniser import Meters, meter_questions
 from auditor.judging.steps import steps_in_figures
 from auditor.judging.units import unit_suspects
@@ -85,7 +86,10 @@ def judge(
         Findings of reading, cleaning and metering.
     """
     findings = [_sized(finding, powers, ticks) for finding in earlier]
-    findings += unit_suspects(findings, ticks, settings.tags)
+    findings += [
+        *unit_suspects(findings, ticks, settings.tags),
+        *range_questions(findings, ticks, settings.tags),
+    ]
     findings += [
         _sized(question, powers, ticks)
         for question in meter_questions(settings.meters, ticks, powers, balances)

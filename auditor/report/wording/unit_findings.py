@@ -88,6 +88,18 @@ def _out_of_range(finding: Finding, plant: Plant) -> Text:
     )
 
 
+def _range(finding: Finding, plant: Plant) -> Text:
+    first, last = finding.words.get("first"), finding.words.get("last")
+    shown = f" (the first “{first}”, the last “{last}”)" if first is not None and last is not None else ""
+    return (
+        f"{subject(finding, plant)} may be logged in another unit for a time",
+        f"{many(finding, 'reading')}{shown} {when(finding, plant)} lie outside the believable range, but are "
+        f"usual for this tag once a familiar ratio is taken out. {_asked(finding)} Nothing was converted: "
+        f"they stay rejected.{size(finding, 'About {} passed in that time.')}",
+        _checks(finding),
+    )
+
+
 def _second_meter(finding: Finding, plant: Plant) -> Text:
     this, other = names.tag(plant, finding.tag), names.tag(plant, finding.words.get("other"))
     before, after = (finding.numbers.get(name, math.nan) for name in ("before", "after"))
@@ -211,6 +223,7 @@ def _checks(finding: Finding) -> str:
 
 _BY_EVIDENCE: Mapping[str, Callable[[Finding, Plant], Text]] = MappingProxyType(
     {
+        "range": _range,
         "second meter": _second_meter,
         "own past": _own_past,
         "nameplate": _nameplate,
