@@ -243,6 +243,18 @@ def test_a_machine_that_truly_idles_is_not_asked_about(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize(
+    ("factor", "cause"), [(0.1, "decimal place=10"), (10.0, "decimal place=10"), (1 / 3.6, "factor 3.6=3.6")]
+)
+def test_fuel_that_is_wrong_all_month(tmp_path: Path, factor: float, cause: str) -> None:
+    """No gas engine has 4 % or 400 %: the fuel meter's weight or unit, or the power meter's."""
+    columns = month(15)
+    columns["G"] = factor * columns["G"]
+    (finding,) = questions(audited(tmp_path, PLANT.replace("5 m3/h", "1 m3/h"), columns), "level")
+    assert cause in finding.words["candidates"].split("; ")
+    assert finding.suspects == ("gas", "power")
+
+
+@pytest.mark.parametrize(
     ("from_day", "factor", "cause"),
     [(20, 1000.0, "decimal place"), (0, 1000.0, "decimal place"), (20, 3.6, "factor 3.6")],
 )

@@ -29,10 +29,11 @@ _FINEST = 1e-3
 
 
 @dataclass(frozen=True)
-class _Meter:
+class Meter:
     """A measured stream: by which tag its size is logged, and which ratios its mistakes leave behind."""
 
     key: str
+    """``machine.stream``."""
     tag: str
     machine: str
     familiar: tuple[Familiar, ...]
@@ -62,11 +63,13 @@ def own_past_questions(
     Every two measured streams of a machine are compared. The suspects of a moment are the streams whose
     ratios changed to all others; with two streams only, either may be at fault and both are named.
     """
-    meters: dict[str, _Meter] = {}
+    meters: dict[str, Meter] = {}
     judged: set[tuple[str, str]] = set()
     seen: list[_Seen] = []
     for machine in machines.values():
-        mine = [meter for stream in machine.streams_of(*_ROLES) if (meter := _meter(stream, machines, fuels))]
+        mine = [
+            meter for stream in machine.streams_of(*_ROLES) if (meter := meter_of(stream, machines, fuels))
+        ]
         meters |= {meter.key: meter for meter in mine}
         running = powers.running[machine.name] == 1.0
         for top, bottom in combinations(mine, 2):
@@ -97,22 +100,23 @@ def _until(question: Finding, asked: list[Finding], powers: PowerTable) -> int:
     return min(later, default=powers.grid.period.end_us)
 
 
-def _meter(stream: Stream, machines: Mapping[str, Machine], fuels: Mapping[str, Fuel]) -> _Meter | None:
+def meter_of(stream: Stream, machines: Mapping[str, Machine], fuels: Mapping[str, Fuel]) -> Meter | None:
+    """Find the meter of a stream, also where it is the stream of another machine; None where it has none."""
     way = stream.way
     if isinstance(way, SameAs):
-        return _meter(machines[way.machine].streams[way.stream], machines, fuels)
+        return meter_of(machines[way.machine].streams[way.stream], machines, fuels)
     if isinstance(way, GasVolume):
-        return _Meter(stream.key, way.volume, stream.machine, of_fuel(fuels[way.fuel], by_mass=False))
+        return Meter(stream.key, way.volume, stream.machine, of_fuel(fuels[way.fuel], by_mass=False))
     if isinstance(way, LiquidFuel):
         tag = way.mass if way.mass is not None else way.volume
         fuel = fuels[way.fuel]
-        return _Meter(stream.key, str(tag), stream.machine, of_fuel(fuel, by_mass=way.mass is not None))
+        return Meter(stream.key, str(tag), stream.machine, of_fuel(fuel, by_mass=way.mass is not None))
     if isinstance(way, Power):
-        return _Meter(stream.key, way.tag, stream.machine, OF_POWER)
+        return Meter(stream.key, way.tag, stream.machine, OF_POWER)
     if isinstance(way, Shaft):
-        return _Meter(stream.key, way.torque, stream.machine, OF_POWER)
+        return Meter(stream.key, way.torque, stream.machine, OF_POWER)
     if isinstance(way, FlowAndTemperatures):
-        return _Meter(stream.key, way.flow, stream.machine, OF_FLOW)
+        return Meter(stream.key, way.flow, stream.machine, OF_FLOW)
     return None  # made from other streams, so it has no meter of its own
 
 
@@ -128,7 +132,7 @@ def _events(seen: list[_Seen]) -> list[list[_Seen]]:
 
 
 def _question(
-    event: list[_Seen], judged: set[tuple[str, str]], meters: Mapping[str, _Meter]
+    event: list[_Seen], judged: set[tuple[str, str]], meters: Mapping[str, Meter]
 ) -> Finding | None:
     stepped = {each.pair for each in event}
     share = {
@@ -137,7 +141,7 @@ def _question(
     }
     most = max(share.values())
     suspects = [meters[key] for key, of_it in share.items() if of_it == most]
-    asked: list[tuple[float, _Meter, _Seen, tuple[Familiar, ...]]] = []
+    asked: list[tuple[float, Meter, _Seen, tuple[Familiar, ...]]] = []
     for meter in suspects:
         best = min(
             (each for each in event if meter.key in each.pair),

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from auditor.judging.level_units import level_questions
 from auditor.judging.nameplate import nameplate_questions
 from auditor.judging.own_past import own_past_questions
 from auditor.judging.pressure_kinds import pressure_questions
@@ -49,7 +50,7 @@ class Meters:
 def meter_questions(
     meters: Meters, ticks: TickTable, powers: PowerTable, balances: Mapping[str, MachineBalance]
 ) -> list[Finding]:
-    """Compare every meter with its second meter, its own past, the nameplate and the air.
+    """Compare every meter with its second meter, its own past, the nameplate, the air and its kind.
 
     Returns
     -------
@@ -57,10 +58,11 @@ def meter_questions(
         All of the code ``UNIT_SUSPECTED``; ``words["evidence"]`` tells which comparison it came from.
     """
     machines, tags = meters.machines, meters.tags
-    return [
+    asked = [
         *second_meter_questions(tags, machines, ticks, powers, meters.coverage),
         *own_past_questions(machines, meters.fuels, powers, meters.coverage),
         *nameplate_questions(machines, balances),
         *pressure_questions(machines, meters.gas_meters, tags, meters.air_pressure, ticks, balances),
         *temperature_questions(machines, tags, ticks, powers),
     ]
+    return asked + level_questions(machines, meters.fuels, balances, asked)

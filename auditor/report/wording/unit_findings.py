@@ -100,6 +100,18 @@ def _range(finding: Finding, plant: Plant) -> Text:
     )
 
 
+def _level(finding: Finding, plant: Plant) -> Text:
+    suspects = names.listing([names.tag(plant, name) for name in finding.suspects])
+    ratio, U = (finding.numbers.get(name, math.nan) for name in ("ratio", "ratio_U"))
+    return (
+        f"the {names.figure(finding.words.get('figure', ''))} of {names.machine(plant, finding.machine)} is "
+        "no figure of a machine",
+        f"Over the whole period it is {percent(ratio)} ± {percent(U)}, far from what machines of its kind "
+        f"show; a ratio in {suspects} would explain it. {_asked(finding)} {_NOTHING_DONE}",
+        _checks(finding),
+    )
+
+
 def _second_meter(finding: Finding, plant: Plant) -> Text:
     this, other = names.tag(plant, finding.tag), names.tag(plant, finding.words.get("other"))
     before, after = (finding.numbers.get(name, math.nan) for name in ("before", "after"))
@@ -226,6 +238,7 @@ _BY_EVIDENCE: Mapping[str, Callable[[Finding, Plant], Text]] = MappingProxyType(
         "range": _range,
         "second meter": _second_meter,
         "own past": _own_past,
+        "level": _level,
         "nameplate": _nameplate,
         "pressure kind": _pressure_kind,
         "temperature step": _temperature_step,
