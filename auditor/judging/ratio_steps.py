@@ -24,6 +24,10 @@ SIDE_US = 48 * 3_600_000_000
 """Record compared on each side of a step."""
 _BLOCK_US = 6 * 3_600_000_000
 """Readings within a quarter of a day share weather and load: each such block counts as one."""
+_DAY_US = 86_400_000_000
+_LEAST_QUIET = 6
+"""Fewest stretches without a step from which the usual change from day to day is taken."""
+_MAD_TO_SIGMA = 1.4826
 _LEAST_BLOCKS = 4
 """Fewest blocks on each side."""
 _CLASSES = 12
@@ -46,7 +50,7 @@ class RatioStep:
     factor: float
     """By which the ratio changed at equal load [1]."""
     factor_U: float
-    """Expanded uncertainty of ``factor`` from scatter alone [1]."""
+    """Expanded uncertainty of ``factor`` from scatter and from what differs from day to day [1]."""
 
 
 def ratio_steps(times_us: NDArray[np.int64], top: Floats, bottom: Floats) -> list[RatioStep]:
@@ -59,17 +63,42 @@ def ratio_steps(times_us: NDArray[np.int64], top: Floats, bottom: Floats) -> lis
     """
     found = []
     ratio = top / bottom
-    for step in largest_steps(times_us, ratio):
-        sized = [
-            of_load
-            for load in (bottom, top)
-            if (of_load := _at_equal_load(times_us, np.log(ratio), np.log(load), step.index)) is not None
-        ]
-        if sized:
-            size, U, _ = max(sized, key=lambda each: each[2])
+    steps = largest_steps(times_us, ratio)
+    quiet = _quiet_places(times_us, [step.index for step in steps]) if steps else []
+    logarithm, loads = np.log(ratio), (np.log(bottom), np.log(top))
+    for step in steps:
+        sized = [(_at_equal_load(times_us, logarithm, load, step.index), load) for load in loads]
+        known = [(change, load) for change, load in sized if change is not None]
+        if known:
+            (size, scatter_U, _), load = max(known, key=lambda each: each[0][2])
+            U = max(scatter_U, _usual_U(times_us, logarithm, load, quiet, scatter_U))
             factor = math.exp(size)
             found.append(RatioStep(step.index, step.before, step.after, factor, factor * U))
     return found
+
+
+def _quiet_places(times_us: NDArray[np.int64], steps: list[int]) -> list[int]:
+    """One point a day with whole sides, which no step lies in."""
+    days_us = np.arange(times_us[0] + SIDE_US, times_us[-1] - SIDE_US, _DAY_US)
+    places = [int(index) for index in np.unique(np.searchsorted(times_us, days_us))]
+    return [
+        index for index in places if all(abs(times_us[index] - times_us[step]) > SIDE_US for step in steps)
+    ]
+
+
+def _usual_U(
+    times_us: NDArray[np.int64], ratio: Floats, load: Floats, quiet: list[int], scatter_U: float
+) -> float:
+    """Twice the usual change at equal load between neighbouring stretches without a step.
+
+    Days differ by more than their quarters do. Where the record is too short to tell by how much, the four
+    quarters of a day are taken as one: twice the scatter.
+    """
+    changes = [_at_equal_load(times_us, ratio, load, index) for index in quiet]
+    known = [change[0] for change in changes if change is not None]
+    if len(known) < _LEAST_QUIET:
+        return 2.0 * scatter_U
+    return 2.0 * _MAD_TO_SIGMA * float(np.median(np.abs(known)))
 
 
 def sides(times_us: NDArray[np.int64], index: int) -> tuple[slice, slice]:
