@@ -123,13 +123,15 @@ def _at_equal_load(
 ) -> tuple[float, float, int] | None:
     """Change of the logarithm of a ratio at equal load, its U, and the number of intervals matched."""
     left, right = sides(times_us, index)
-    edges = np.unique(np.quantile(np.concatenate((load[left], load[right])), np.linspace(0, 1, _CLASSES + 1)))
+    window = slice(left.start, right.stop)
+    times_us, ratio, load = times_us[window], ratio[window], load[window]
+    is_after = np.arange(times_us.size) >= index - left.start
+    edges = np.unique(np.quantile(load, np.linspace(0.0, 1.0, _CLASSES + 1)))
     classes = np.searchsorted(edges[1:-1], load, side="right")
     changes, weights = np.full(_CLASSES, np.nan), np.zeros(_CLASSES)
     residual = np.full(ratio.shape, np.nan)
     for load_class in range(_CLASSES):
-        mine = classes == load_class
-        before, after = np.flatnonzero(mine[left]) + left.start, np.flatnonzero(mine[right]) + right.start
+        before, after = (np.flatnonzero((classes == load_class) & side) for side in (~is_after, is_after))
         if not before.size or not after.size:
             continue
         middle = np.median(ratio[before]), np.median(ratio[after])
@@ -140,11 +142,9 @@ def _at_equal_load(
     if matched < _LEAST_MATCHED:
         return None
     size = float(np.nansum(changes * weights) / matched)
-    parts = []
-    for side in (left, right):
-        known = np.isfinite(residual[side])
-        parts.append((times_us[side][known], residual[side][known]))
-    U = _U(parts[0], parts[1])
+    matched_sides = [np.isfinite(residual) & side for side in (~is_after, is_after)]
+    before_it, after_it = ((times_us[side], residual[side]) for side in matched_sides)
+    U = _U(before_it, after_it)
     # What differs from class to class is no scatter of readings: the size is not known better than that.
     spread = float(np.sqrt(np.nansum(weights * (changes - size) ** 2) / matched))
     U = math.hypot(U, 2.0 * spread / math.sqrt(max(1, int(np.count_nonzero(weights)))))
