@@ -134,8 +134,7 @@ def _own_past(finding: Finding, plant: Plant) -> Text:
     inverse = " or its inverse" if len(finding.suspects) > 1 else ""
     return (
         f"did a unit or a setting of {suspects} change?",
-        f"From {_since(finding, plant)} on {either} {percent(abs(factor - 1.0))} "
-        f"{'more' if factor > 1.0 else 'less'} at equal load, against "
+        f"From {_since(finding, plant)} on {either} {_more_or_less(factor)} at equal load, against "
         f"{names.tag(plant, finding.words.get('other'))}: a factor of {_measured(finding)}{inverse}. "
         f"{_asked(finding)} {_NOTHING_DONE}{size(finding, 'About {} passed since then.')}",
         _checks(finding),
@@ -191,6 +190,15 @@ def _temperature_step(finding: Finding, plant: Plant) -> Text:
         "Ask whether the logger or the transmitter was set up anew that day, and hold a thermometer against "
         "the pipe.",
     )
+
+
+def _more_or_less(factor: float) -> str:
+    """``5.6 % more``; in words alone where the change is too large for percent."""
+    if not math.isfinite(factor):
+        return "differently"
+    if not 0.5 < factor < 2.0:
+        return "far more" if factor > 1.0 else "far less"
+    return f"{percent(abs(factor - 1.0))} {'more' if factor > 1.0 else 'less'}"
 
 
 def _since(finding: Finding, plant: Plant) -> str:
