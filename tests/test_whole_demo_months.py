@@ -144,7 +144,21 @@ def test_thirty_hours_in_kelvin_are_withheld(demos: dict[str, Demo]) -> None:
     coil = intervals(demo.out, "coil")
     assert np.isnan(coil["heat_pct"][inside(coil, window)]).all()
     suspected = [each for each in findings(demo.out) if each["code"] == "unit suspected"]
-    assert [(each["tag"], each["from"]) for each in suspected] == [("oil_hot", window[0])]
+    assert ("oil_hot", window[0]) in [(each["tag"], each["from"]) for each in suspected]
+
+
+def test_units_are_doubted_only_where_the_plant_was_changed(demos: dict[str, Demo]) -> None:
+    """The panel's switch from net to gross is dated; fan, flow meter and new heating value are no units."""
+    suspected = {
+        name: [each for each in findings(demo.out) if each["code"] == "unit suspected"]
+        for name, demo in demos.items()
+    }
+    assert suspected["quillmere"] == []
+    assert {each["tag"] for each in suspected["emberlund"]} == {"oil_hot", "panel_power"}
+    (panel,) = (each for each in suspected["emberlund"] if each["tag"] == "panel_power")
+    assert panel["from"] == demos["emberlund"].window("6")[0]
+    assert panel["words"]["candidates"].startswith("net or gross")
+    assert panel["numbers"]["after"] == pytest.approx(1.0, abs=0.02)
 
 
 def test_hours_of_a_frozen_sensor_are_withheld(demos: dict[str, Demo]) -> None:

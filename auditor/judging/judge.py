@@ -10,6 +10,8 @@ import numpy as np
 
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.range_units import range_questions
+from auditor.judging.recogniser import Meters, meter_questions
 from auditor.judging.steps import steps_in_figures
 from auditor.judging.units import unit_suspects
 from auditor.judging.verdicts import judge_machine
@@ -47,11 +49,12 @@ class JudgingSettings:
     machines: Mapping[str, Machine]
     tags: Mapping[str, Tag]
     interval_coverage: float
+    meters: Meters
 
     @classmethod
     def from_plant(cls, plant: Plant) -> JudgingSettings:
         """Take the slice from a plant."""
-        return cls(plant.machines, plant.tags, plant.rules.interval_coverage)
+        return cls(plant.machines, plant.tags, plant.rules.interval_coverage, Meters.from_plant(plant))
 
 
 @dataclass(frozen=True)
@@ -85,7 +88,14 @@ def judge(
         Findings of reading, cleaning and metering.
     """
     findings = [_sized(finding, powers, ticks) for finding in earlier]
-    findings += unit_suspects(findings, ticks, settings.tags)
+    findings += [
+        *unit_suspects(findings, ticks, settings.tags),
+        *range_questions(findings, ticks, settings.tags),
+    ]
+    findings += [
+        _sized(question, powers, ticks)
+        for question in meter_questions(settings.meters, ticks, powers, balances)
+    ]
     judgements: dict[str, MachineJudgement] = {}
     for name, balance in balances.items():
         machine = settings.machines[name]

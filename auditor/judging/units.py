@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     from auditor.records.plant import Tag
     from auditor.records.ticks import TickTable
 
-_TEMPERATURE_SCALES = {
+TEMPERATURE_SCALES = {
     "K": (1.0, 0.0),
     "degC": (1.0, 273.15),
     "degF": (1.0 / 1.8, 459.67 / 1.8),
@@ -59,8 +59,14 @@ def _better_unit(finding: Finding, tag: Tag, ticks: TickTable) -> str | None:
         return None
     usual_K = float(np.nanmean(mean_K))
     allowed_K = _USUAL * (tag.believable[1] - tag.believable[0])
-    for unit, (scale, offset) in _TEMPERATURE_SCALES.items():
-        is_declared = abs(scale - tag.scale) < 1e-9 and abs(offset - tag.offset) < 1e-9
-        if not is_declared and all(abs(scale * value + offset - usual_K) <= allowed_K for value in raw):
+    for unit, (scale, offset) in TEMPERATURE_SCALES.items():
+        if not is_declared_unit(tag, scale, offset) and all(
+            abs(scale * value + offset - usual_K) <= allowed_K for value in raw
+        ):
             return unit
     return None
+
+
+def is_declared_unit(tag: Tag, scale: float, offset: float) -> bool:
+    """Whether a scale is that of the unit that a tag was declared in."""
+    return abs(scale - tag.scale) < 1e-9 and abs(offset - tag.offset) < 1e-6

@@ -43,6 +43,10 @@ class NumberTag(Part):
     believable: list[float] | None = optional(
         "least and largest believable value, in the tag's own unit", [0, 700], alias="range"
     )
+    same_quantity_as: OneLine | None = optional(
+        "tag of another meter of the very same thing, or of its counter: the two are compared, nothing else",
+        "gross_power",
+    )
 
 
 class EvidencePart(Part):

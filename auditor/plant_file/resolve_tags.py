@@ -29,6 +29,7 @@ from auditor.plant_file.quantities import (
     uncertainty,
     unit_conversion,
 )
+from auditor.plant_file.references import find, tick_quantity
 from auditor.plant_file.value_tests import value_tests
 from auditor.plant_file.written import shown
 from auditor.records.plant import Tag
@@ -50,7 +51,24 @@ def resolve_tags(exports: Mapping[str, ExportPart], book: FaultBook) -> dict[str
             _check_column(name, part, columns, (path, book))
             homes.setdefault(name, export)
             tags.setdefault(name, _resolve_tag(name, part, path, book))
+    for tag in tags.values():
+        if tag is not None and tag.same_quantity_as is not None:
+            _check_second_meter(tag, tags, book)
     return tags
+
+
+def _check_second_meter(tag: Tag, tags: Mapping[str, Tag | None], book: FaultBook) -> None:
+    path = ("exports", tag.export, "tags", tag.name, "same_quantity_as")
+    other = find("tag", tag.same_quantity_as, tags, path, book)
+    if other is tag:
+        book.add(path, "a tag is not its own second meter", "name the other meter's tag")
+    elif other is not None and (other.states is not None or tick_quantity(other) != tick_quantity(tag)):
+        book.add(
+            path,
+            f'tag "{other.name}" measures {other.quantity} ({other.unit}), not the {tick_quantity(tag)} '
+            f"that this tag measures",
+            "name a tag of the same quantity (a counter goes with its rate), or correct the unit",
+        )
 
 
 def _check_name(name: str, path: KeyPath, homes: Mapping[str, str], book: FaultBook) -> None:
@@ -116,6 +134,7 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
         cut_off=reader.size("cut_off", part.cut_off) if isinstance(part, InstantTag) else None,
         pressure=part.pressure if isinstance(part, InstantTag) else None,
         basis=part.basis if isinstance(part, InstantTag) else None,
+        same_quantity_as=part.same_quantity_as,
         line=book.line(path),
     )
     return tag if book.clean(path) else None

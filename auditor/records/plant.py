@@ -161,6 +161,8 @@ class Tag:
     basis: Literal["dry", "wet"] | None = None
     states: Mapping[str, str] | None = None
     """Raw text to state name, for ``between = "state"``."""
+    same_quantity_as: str | None = None
+    """Another tag that measures the same thing; the two are compared, and nothing else comes of it."""
     line: int = 0
     """Line of the plant file, for messages."""
 

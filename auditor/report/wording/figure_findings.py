@@ -10,7 +10,8 @@ from auditor.records.plant import Plant
 from auditor.report.clock import Clock
 from auditor.report.numbers import count, percent, shown
 from auditor.report.wording import names
-from auditor.report.wording.data_findings import Text, many, size, subject, when
+from auditor.report.wording.data_findings import Text, size, when
+from auditor.report.wording.unit_findings import unit_suspected
 from auditor.report.wording.verdicts import withheld
 from auditor.units import DISPLAY
 
@@ -75,22 +76,6 @@ def _time_of_day(seconds: float) -> str:
     return f"{minutes // 60:02d}:{minutes % 60:02d}"
 
 
-def _unit(finding: Finding, plant: Plant) -> Text:
-    declared = names.units(finding.words.get("declared", ""))
-    other = names.units(finding.words.get("unit", "another unit"))
-    against = f" instead of {declared}" if declared else ""
-    first, last = finding.words.get("first"), finding.words.get("last")
-    shown = f" (the first “{first}”, the last “{last}”)" if first is not None and last is not None else ""
-    return (
-        f"{subject(finding, plant)} may be logged in {other}{against}",
-        f"{many(finding, 'reading')}{shown} {when(finding, plant)} make no sense as declared, but are usual "
-        f"for this tag if they are {other}. Nothing was converted: they stay rejected."
-        f"{size(finding, 'About {} passed in that time.')}",
-        "Ask whether the logger or the transmitter was set up anew that day, and have the stretch exported "
-        "again in the declared unit.",
-    )
-
-
 def _step(finding: Finding, plant: Plant) -> Text:
     key = finding.words.get("figure", "")
     before, after = (finding.numbers.get(name, math.nan) for name in ("before", "after"))
@@ -140,7 +125,7 @@ def _withheld(finding: Finding, plant: Plant) -> Text:
 WRITERS: dict[FindingCode, Callable[[Finding, Plant], Text]] = {
     FindingCode.OPEN_BALANCE: _open_balance,
     FindingCode.IMPOSSIBLE_CLUSTER: _impossible,
-    FindingCode.UNIT_SUSPECTED: _unit,
+    FindingCode.UNIT_SUSPECTED: unit_suspected,
     FindingCode.STEP_IN_FIGURE: _step,
     FindingCode.HEATING_VALUE_CHANGED: _heating_value,
     FindingCode.WITHHELD_FIGURE: _withheld,
