@@ -29,13 +29,28 @@ def _clock_step(finding: Finding, plant: Plant) -> Text:
             "order, and were rejected.",
             "Split the file where its stamps fall, or ask whether the logger's clock was set.",
         )
+    if "reset" in finding.numbers:
+        year = finding.words.get("year", "another year")
+        off = f", {_years(step)} off" if math.isfinite(step) else ""
+        return (
+            f"the clock of {_export(finding)} was reset to {year}",
+            f"{many(finding, 'row')} of {_file(finding)} carry stamps of {year}{off}, from {place(finding)} "
+            "on. When they were written, the file does not tell; they were rejected.",
+            "Change the battery of the logger's clock and set it; ask its maker whether these rows can be "
+            "dated again.",
+        )
     moved = f" by {duration(abs(step))} {'back' if step < 0 else 'forward'}" if math.isfinite(step) else ""
     return (
         f"the clock of {_export(finding)} was set",
-        f"Its stamps jump{moved} {when(finding, plant)} ({place(finding)}). Which side of the jump is "
-        "right, the file does not tell.",
+        f"Its stamps jump{moved} {when(finding, plant)} ({place(finding)}), the usual step between two rows "
+        "counted in. Which side of the jump is right, the file does not tell.",
         "Ask who set the logger's clock that day, and compare a start or stop of the machine in two exports.",
     )
+
+
+def _years(seconds: float) -> str:
+    """``55.5 years``: how far a clock is off that was reset."""
+    return f"{abs(seconds) / 31_556_952.0:.1f}\u00a0years"
 
 
 def _clock_offset(finding: Finding, plant: Plant) -> Text:
@@ -79,8 +94,8 @@ def _clocks_apart(finding: Finding, plant: Plant) -> Text:
             "exports.",
         )
     told = (
-        f"{own} stamps the same events {_apart(offset)} {side} (± {_apart(spread)}) than {others}, on {seen}; "
-        f"seen in {tags}."
+        f"{own} stamps the same events {_apart(offset)} {side} (± {_apart(spread)}) than {others}, "
+        f"on {seen}; seen in {tags}."
     )
     if kind == "time rule":
         rule = 60 * round(abs(offset) / 3600.0)
