@@ -28,6 +28,8 @@ _LEAST_S = 180.0
 """Smaller differences between quick signals are taken for the way of the thing itself."""
 _LEAST_SLOW_S = 1_200.0
 """The same where one of the two is slow: heat needs minutes to arrive."""
+_WHOLE_STEP = 0.9
+"""Share of a step between samples that a lag of one step still shows, noise taken off."""
 _SAME_S = 150.0
 """Days whose lags differ by no more belong together."""
 _LEAST_DAYS = 3
@@ -134,8 +136,8 @@ def _stretches(
     best: tuple[int, list[_Stretch]] = (0, [])
     for pair, lag in lags.items():
         slow = any(_is_slow(column, ticks, settings) for column in pair)
-        coarse_s = max(float(ticks.native_step_s[column]) for column in pair)
-        least_s = max(_LEAST_SLOW_S if slow else _LEAST_S, coarse_s, 0.9 * ticks.grid.tick_s)
+        coarse_s = max(ticks.grid.tick_s, *(float(ticks.native_step_s[column]) for column in pair))
+        least_s = max(_LEAST_SLOW_S if slow else _LEAST_S, _WHOLE_STEP * coarse_s)
         tags = (ticks.tags[pair[0]], ticks.tags[pair[1]])
         told = []
         for days in _parts(lag, max(_SAME_S, 1.5 * ticks.grid.tick_s)):

@@ -163,11 +163,21 @@ def _conflict(finding: Finding, plant: Plant) -> Text:
     return (
         f"{subject(finding, plant)} has two values for one stamp",
         f"{many(finding, 'stamp')} {when(finding, plant)} carried values that differ.{rule}"
-        f"{size(finding, 'The choice moves the energy by {}.')}",
+        f"{size(finding, 'The choice moves the energy by {}.')}{_amount_moved(finding, plant)}",
         f"Open {place(finding)} beside "
         f"{kept if kept not in (None, finding.file) else 'the lines that repeat it'} and decide which "
         "of them is the original.",
     )
+
+
+def _amount_moved(finding: Finding, plant: Plant) -> str:
+    """Say by how much the choice moves the sum of a meter of volume or mass; nothing for other tags."""
+    declared = plant.tags.get(finding.tag or "")
+    amount = finding.numbers.get("effect_SI_s", math.nan)
+    unit = "" if declared is None else declared.si_unit.removesuffix("/s")
+    if unit not in ("m3", "kg") or not math.isfinite(amount) or not amount:
+        return ""
+    return f" The choice moves its sum by {significant(abs(amount), 3)}\u00a0{unit.replace('m3', 'm³')}."
 
 
 def _distrusted(finding: Finding, plant: Plant) -> Text:

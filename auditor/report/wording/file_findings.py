@@ -100,7 +100,7 @@ def _clocks_apart(finding: Finding, plant: Plant) -> Text:
     if kind == "time rule":
         rule = 60 * round(abs(offset) / 3600.0)
         return (
-            f"{own} looks {rule}\u00a0min off: time rule?",
+            f"{own} looks {rule}\u00a0min off (time rule?)",
             f"{told} So much lies between summer time, winter time and UTC. No stamp was shifted.",
             "Ask whether this logger follows summer time, and correct the key clock of "
             f"exports.{finding.export} in the plant file.",
