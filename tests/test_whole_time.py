@@ -10,8 +10,8 @@ import numpy as np
 import pytest
 from site_factory import (
     GAS_ENGINE,
-    POWER_TAG,
     TWO_EXPORTS,
+    Layout,
     audited,
     changed,
     export,
@@ -81,6 +81,8 @@ def test_a_source_left_on_winter_time_is_named(
     assert finding["title"] == "The export power looks 60\u00a0min off (time rule?)"
     assert "exports.power" in finding["check"] and "No stamp was shifted" in finding["text"]
     assert finding["from"].startswith(start)
+    in_skipped_hour = [each for each in of_code(out, "clock offset") if "sign" in each["words"]]
+    assert [each["numbers"]["count"] for each in in_skipped_hour] == ([60] if first < "2025-06" else [])
     # The day of the change shows both rules; which it counts to depends on its events.
     assert abs((datetime.fromisoformat(finding["until"][:10]) - datetime.fromisoformat(end)).days) <= 1
 
@@ -201,15 +203,39 @@ def test_an_overlap_with_other_values_is_decided_by_declared_precedence(tmp_path
         assert "10.0\u00a0kWh" in (out / "report.html").read_text(encoding="utf-8")
 
 
-def test_a_conflict_of_a_volume_is_told_as_a_volume(tmp_path: Path) -> None:
-    """250 m3/h against 244 m3/h of gas for one hour: the choice is worth 6 m3."""
-    assert POWER_TAG in GAS_ENGINE
-    other = dict(FULL_LOAD) | {"G": 244.0}
+def test_a_conflict_of_a_volume_is_told_in_energy_and_volume(tmp_path: Path) -> None:
+    """250 m3/h against 244 m3/h of gas for one hour: the choice is worth 6 m3 of 10 kWh, 60 kWh."""
+    other = FULL_LOAD | {"G": 244.0}
     plant = changed(GAS_ENGINE, ('files = ["plant/*.csv"]', 'files = ["plant/a.csv", "plant/b.csv"]'))
-    files = {
-        "plant/a.csv": export(WHOLE_DAY, FULL_LOAD),
-        "plant/b.csv": export(WHOLE_DAY[60:120], other),
-    }
+    files = {"plant/a.csv": export(WHOLE_DAY, FULL_LOAD), "plant/b.csv": export(WHOLE_DAY[60:120], other)}
     out = audited(tmp_path, plant, files, *one_day(DAY))
     (conflict,) = of_code(out, "conflicting values")
-    assert "The choice moves its sum by 6.00\u00a0m³" in conflict["text"]
+    assert conflict["energy_kWh"] == pytest.approx(60.0, rel=1e-9)
+    assert "The choice moves the energy by 60.0\u00a0kWh (6.00\u00a0m³)" in conflict["text"]
+
+
+def test_a_conflict_of_a_temperature_claims_no_effect(tmp_path: Path) -> None:
+    """90 against 88 degC: what the choice moves hangs on the other inputs; only what passed is told."""
+    other = FULL_LOAD | {"S": 88.0}
+    plant = changed(GAS_ENGINE, ('files = ["plant/*.csv"]', 'files = ["plant/a.csv", "plant/b.csv"]'))
+    files = {"plant/a.csv": export(WHOLE_DAY, FULL_LOAD), "plant/b.csv": export(WHOLE_DAY[60:120], other)}
+    out = audited(tmp_path, plant, files, *one_day(DAY))
+    (conflict,) = of_code(out, "conflicting values")
+    assert "The choice moves" not in conflict["text"] and "passed in that time" in conflict["text"]
+
+
+@pytest.mark.parametrize("rule", ["by order", "drop"])
+def test_the_hour_that_autumn_repeats_by_declared_rule(tmp_path: Path, rule: str) -> None:
+    """25 h of 1000 kW: all by the order of lines, or 23 h and two hours missing where the hour is dropped."""
+    plant = changed(
+        GAS_ENGINE,
+        ('zone = "UTC"', f'zone = "{ZONE}"'),
+        ('clock = "UTC"', f'clock = "{ZONE}"\nrepeated_hour = "{rule}"'),
+    )
+    seconds = instants("2025-10-25T23:50", "2025-10-27T00:10", clock=ZONE)
+    files = {"plant/a.csv": export(seconds, FULL_LOAD, Layout(clock=ZONE))}
+    code, hours = (0, 25.0) if rule == "by order" else (0, 23.0)
+    out = audited(tmp_path, plant, files, *one_day("2025-10-26"), expect=code)
+    assert figures(out)["work_gross_kWh"]["logged"] == pytest.approx(hours * 1000.0, abs=20.0)
+    assert figures(out)["gross_pct"]["coverage_pct"] == pytest.approx(100.0 * hours / 25.0, abs=0.1)
+    assert len(of_code(out, "repeated hour")) == (rule == "drop")

@@ -37,7 +37,6 @@ _LEAST_DAYS_OF_DRIFT = 8
 _LEAST_DRIFT_S = 120.0
 _RULES_S = (3600.0, 7200.0)
 _NEAR_RULE_S = 240.0
-_HUNDREDTH_S = 0.01
 
 
 @dataclass(frozen=True)
@@ -84,9 +83,12 @@ def compare_clocks(ticks: TickTable, settings: CleaningSettings) -> tuple[Findin
 
     Notes
     -----
-    Limits: signals logged more rarely than every 15 min are not compared; events that come back within
-    150 min in equal distances give no clear peak; two exports alone do not tell which of them is wrong.
+    Limits: signals logged, or cut into ticks, more rarely than every 15 min are not compared; events that
+    come back within 150 min in equal distances give no clear peak; two exports alone do not tell which of
+    them is wrong.
     """
+    if ticks.grid.tick_s > _SLOWEST_S:
+        return ()
     columns = _columns_of_exports(ticks, settings)
     wanted = sorted({column for pairs in columns.values() for pair in pairs for column in pair})
     spectra = {column: daily_spectra(ticks.mean[:, column], ticks.grid) for column in wanted}
@@ -267,4 +269,4 @@ def _finding(stretch: _Stretch, others: list[str], ticks: TickTable) -> Finding:
 
 def _rounded(seconds: float) -> float:
     """To hundredths: what lies below is rounding of the transform."""
-    return round(seconds / _HUNDREDTH_S) * _HUNDREDTH_S
+    return round(seconds, 2)

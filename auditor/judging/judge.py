@@ -10,6 +10,7 @@ import numpy as np
 
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.conflict_effect import with_effect
 from auditor.judging.steps import steps_in_figures
 from auditor.judging.units import unit_suspects
 from auditor.judging.verdicts import judge_machine
@@ -82,7 +83,11 @@ def judge(
     earlier : iterable of Finding
         Findings of reading, cleaning and metering.
     """
-    findings = [_sized(finding, powers, ticks) for finding in earlier]
+    quantities = {name: tag.quantity for name, tag in settings.tags.items()}
+    findings = [
+        _sized(with_effect(finding, quantities.get(finding.tag or "", ""), powers, ticks), powers, ticks)
+        for finding in earlier
+    ]
     findings += unit_suspects(findings, ticks, settings.tags)
     judgements: dict[str, MachineJudgement] = {}
     for name, balance in balances.items():
