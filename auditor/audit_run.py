@@ -11,7 +11,7 @@ from pathlib import Path
 import auditor
 from auditor import influences
 from auditor.balancing import BalancingSettings, balance, finish, rebalance
-from auditor.cleaning import CleaningSettings, clean
+from auditor.cleaning import CleaningSettings, clean, compare_clocks
 from auditor.cleaning.grid import between_dates, calendar_month, make_grid, month_labels
 from auditor.judging import JudgingSettings, judge
 from auditor.log_reading import Recognition, read_export, recognise, recognition_notes
@@ -271,10 +271,11 @@ def _read_and_clean(
 
     names = list(plant.exports)
     exports = {name: blocks(name, 0.6 * place / len(names)) for place, name in enumerate(names)}
-    ticks, cleaned = clean(exports, CleaningSettings.from_plant(plant), grid)
+    settings = CleaningSettings.from_plant(plant)
+    ticks, cleaned = clean(exports, settings, grid)
     notes += recognition_notes(opened.recognition)
     notes.sort(key=lambda note: note.file)
-    findings = [*opened.recognition.findings, *cleaned]
+    findings = [*opened.recognition.findings, *cleaned, *compare_clocks(ticks, settings)]
     findings += [finding for note in notes for finding in note.findings]
     return ticks, tuple(notes), findings
 

@@ -61,11 +61,14 @@ def _published(result: AuditResult, opened: OpenedSite, out: Path | None) -> Pat
         publish(result, out)
         return out / REPORT
     site, label = opened.plant.folder, result.period.label
+    restated = None
     if re.fullmatch(r"\d{4}-\d{2}", label):
-        publish_month(result, site / AUDIT, content_key(opened, result.period, hash_files(site / LOGS)))
+        key = content_key(opened, result.period, hash_files(site / LOGS))
+        restated = publish_month(result, site / AUDIT, key)
     else:
         publish(result, site / AUDIT / label)
-    append_run_log(site / AUDIT, [f"{label} audited, exit {int(result.status)}"])
+    more = [] if restated is None else restated.lines(label)
+    append_run_log(site / AUDIT, [f"{label} audited, exit {int(result.status)}", *more])
     return site / AUDIT / label / REPORT
 
 

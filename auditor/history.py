@@ -8,11 +8,11 @@ from __future__ import annotations
 
 import json
 import sqlite3
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from contextlib import closing, contextmanager
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 from auditor.records.errors import Fault, InputOutputError
 
@@ -29,6 +29,42 @@ CREATE TABLE IF NOT EXISTS audits (
     statement TEXT NOT NULL
 )
 """
+
+_RESTATEMENTS = """
+CREATE TABLE IF NOT EXISTS restatements (
+    audit INTEGER NOT NULL REFERENCES audits (number),
+    month TEXT NOT NULL,
+    reasons TEXT NOT NULL,
+    machine TEXT,
+    figure TEXT,
+    unit TEXT,
+    old REAL,
+    new REAL,
+    old_status TEXT,
+    new_status TEXT
+)
+"""
+"""One row for each headline figure that an audit changed; where it changed none, one row without a figure."""
+
+
+class ChangedFigure(Protocol):
+    """A headline figure before and after; a value is None while it is withheld."""
+
+    @property
+    def row(self) -> tuple[str, str, str, float | None, float | None, str, str]:
+        """Machine, figure, unit, old and new value, old and new status."""
+
+
+class Changes(Protocol):
+    """What an audit changed of the one before."""
+
+    @property
+    def reasons(self) -> Sequence[str]:
+        """Which inputs changed, in plain words."""
+
+    @property
+    def figures(self) -> Sequence[ChangedFigure]:
+        """Headline figures that changed."""
 
 
 @dataclass(frozen=True)
@@ -82,15 +118,16 @@ def read_past(folder: Path) -> dict[str, PastAudit]:
     }
 
 
-def append(folder: Path, audit: PastAudit) -> None:
-    """Append one published audit, unless it is the same as the month's latest."""
+def append(folder: Path, audit: PastAudit, changes: Changes | None = None) -> None:
+    """Append one published audit and what it changed, unless it is the same as the month's latest."""
     if read_past(folder).get(audit.month) == audit:
         return
     with _opened(folder / HISTORY) as connection:
         # Immediate: a deferred transaction that reads first may be refused at the write.
         connection.execute("BEGIN IMMEDIATE")
         connection.execute(_TABLE)
-        connection.execute(
+        connection.execute(_RESTATEMENTS)
+        number = connection.execute(
             "INSERT INTO audits (month, content_key, version, exit_code, outputs, statement) "
             "VALUES (?, ?, ?, ?, ?, ?)",
             (
@@ -101,5 +138,12 @@ def append(folder: Path, audit: PastAudit) -> None:
                 json.dumps(audit.outputs, sort_keys=True),
                 json.dumps(audit.statement, sort_keys=True),
             ),
-        )
+        ).lastrowid
+        if changes is not None:
+            reasons = json.dumps(list(changes.reasons), ensure_ascii=False)
+            rows: list[tuple[str | float | None, ...]] = [figure.row for figure in changes.figures]
+            connection.executemany(
+                "INSERT INTO restatements VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)",
+                [(number, audit.month, reasons, *row) for row in rows or [(None,) * 7]],
+            )
         connection.execute("COMMIT")

@@ -26,6 +26,7 @@ from auditor.publishing import publish_index, publish_month
 from auditor.records.errors import AuditorError, Exit, Fault, NoDataError, worst
 from auditor.records.period import Period
 from auditor.records.plant import Fuel, Plant
+from auditor.restating import Restatement
 from auditor.site_folder import AUDIT, LOGS, append_run_log, locked, require_site
 
 _SHORTEST_DAY_US = 23 * 3_600_000_000
@@ -45,6 +46,8 @@ class MonthRun:
     action: str
     """``published``, ``unchanged``, ``no data`` or ``less than a day of logs``."""
     status: Exit
+    restated: Restatement | None = None
+    """What changed, where the month had been published otherwise before."""
 
 
 @dataclass(frozen=True)
@@ -77,7 +80,7 @@ def _one_site(site: Path, say: Say) -> SiteRun:
         require_site(site)
         with locked(site / AUDIT):
             months = _changed_months(site, say)
-            append_run_log(site / AUDIT, [_log_line(run) for run in months])
+            append_run_log(site / AUDIT, [line for run in months for line in _log_lines(run)])
     except AuditorError as error:
         say(f"{name}: {error}")
         _log_failure(site, f"failed, exit {int(error.exit_code)}: {error}")
@@ -95,9 +98,10 @@ def _one_site(site: Path, say: Say) -> SiteRun:
     return SiteRun(name, tuple(months), "", status)
 
 
-def _log_line(run: MonthRun) -> str:
+def _log_lines(run: MonthRun) -> list[str]:
+    restated = [] if run.restated is None else run.restated.lines(run.month)
     tail = f", exit {int(run.status)}" if run.action in _WITH_REPORT else ""
-    return f"{run.month} {run.action}{tail}"
+    return [f"{run.month} {run.action}{tail}", *restated]
 
 
 def _log_failure(site: Path, line: str) -> None:
@@ -142,9 +146,11 @@ def _changed_months(site: Path, say: Say) -> list[MonthRun]:
             runs.append(MonthRun(name, label, "no data", Exit.NO_DATA))
             say(f"{name} {label}: no usable data, nothing written")
             continue
-        publish_month(result, folder / AUDIT, key)
-        runs.append(MonthRun(name, label, "published", result.status))
+        restated = publish_month(result, folder / AUDIT, key)
+        runs.append(MonthRun(name, label, "published", result.status, restated))
         say(f"{name} {label}: published, exit {int(result.status)}")
+        for line in [] if restated is None else restated.lines(label):
+            say(f"{name} {line}")
     publish_index(opened.plant.site.name, folder / AUDIT)
     return runs
 

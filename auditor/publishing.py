@@ -11,6 +11,7 @@ from auditor.report.index import render_index
 from auditor.report.page import render_report
 from auditor.report.statement import findings_json, statement, statement_json
 from auditor.report.tables import dispositions_csv, intervals_csv, intervals_parquet
+from auditor.restating import Restatement, restatement
 from auditor.site_folder import write_outputs
 
 REPORT = "report.html"
@@ -43,18 +44,27 @@ def publish_index(site_name: str, audit_folder: Path) -> None:
         write_outputs(audit_folder, {INDEX: render_index(site_name, past.values()).encode()})
 
 
-def publish_month(result: AuditResult, audit_folder: Path, content_key: str) -> None:
-    """Publish a calendar month below a site's audit folder: its outputs, its history entry, the index."""
-    digests = publish(result, audit_folder / result.period.label)
-    append(
-        audit_folder,
-        PastAudit(
-            month=result.period.label,
-            content_key=content_key,
-            version=result.version,
-            exit_code=int(result.status),
-            outputs=digests,
-            statement=statement(result),
-        ),
+def publish_month(result: AuditResult, audit_folder: Path, content_key: str) -> Restatement | None:
+    """Publish a calendar month below a site's audit folder: its outputs, its history entry, the index.
+
+    Returns
+    -------
+    Restatement or None
+        What changed, where the month had been published otherwise before.
+    """
+    label = result.period.label
+    before = read_past(audit_folder).get(label)
+    audit = PastAudit(
+        month=label,
+        content_key=content_key,
+        version=result.version,
+        exit_code=int(result.status),
+        outputs=publish(result, audit_folder / label),
+        statement=statement(result),
     )
+    restated = None
+    if before is not None and before != audit:
+        restated = restatement(before.statement, audit.statement, result)
+    append(audit_folder, audit, restated)
     publish_index(result.plant.site.name, audit_folder)
+    return restated

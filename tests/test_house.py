@@ -29,12 +29,15 @@ ALLOWED = {
     "site_folder": {"records"},
     "progress": set(),
     "report": {"records", "units", "resources"},
-    "publishing": {"records", "report", "history", "site_folder"},
+    "restating": {"records", "report"},
+    "publishing": {"records", "report", "restating", "history", "site_folder"},
     "audit_run": {
         *("records", "plant_file", "log_reading", "cleaning", "metering", "balancing", "influences"),
         *("judging", "site_folder"),
     },
-    "nightly": {"records", "audit_run", "publishing", "history", "log_reading", "site_folder"},
+    "nightly": {
+        *("records", "audit_run", "publishing", "restating", "history", "log_reading", "site_folder"),
+    },
     "commands": {
         *("records", "audit_run", "nightly", "publishing", "report", "resources", "site_folder"),
         *("progress", "plant_file", "log_reading", "drafting"),

@@ -33,7 +33,7 @@ CASES: dict[str, tuple[str, list[Row], tuple[int, int, int, int], list[FindingCo
         HEAD + ONE + "1970-01-01 00:01;3;4\n" + THREE,
         [GOOD[0], GOOD[2]],
         (4, 2, 1, 1),
-        [REJECTED],
+        [FindingCode.CLOCK_STEP],
     ),
     "separator at the end of data": (
         HEAD + ONE.replace("\n", ";\n") + TWO.replace("\n", ";\n"),

@@ -147,13 +147,16 @@ def test_conversion_against_the_zone_database(zone: str) -> None:
 
 
 def test_backward_step(tmp_path: Path) -> None:
-    """Rows after a step back of the clock are put in order; the step is told with line and size."""
+    """Rows after a step back of the clock are put in order; the step is told with line and size.
+
+    Rows come every 6 min: after 10:06 the clock should have shown 10:12, it showed 10:02.
+    """
     stamps = ["2026-07-01 10:00", "2026-07-01 10:06", "2026-07-01 10:02", "2026-07-01 10:08"]
     got = read(tmp_path, {"log.csv": as_file(stamps)}, make_export({"a": "a"}))
     assert [line for _, line, _ in got.rows] == [2, 4, 3, 5]
     assert got.note.backward_steps == 1
     finding = got.note.findings[0]
-    assert (finding.code, finding.line, finding.numbers["step_s"]) == (FindingCode.CLOCK_STEP, 4, -240.0)
+    assert (finding.code, finding.line, finding.numbers["step_s"]) == (FindingCode.CLOCK_STEP, 4, -600.0)
 
 
 def test_newest_first(tmp_path: Path) -> None:

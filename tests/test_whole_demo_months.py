@@ -184,6 +184,22 @@ def test_most_running_intervals_are_assessed_in_spite_of_the_reversals(demos: di
     assert assessed.sum() >= 0.60 * running.sum()
 
 
+def test_clocks_of_the_exports_are_compared(demos: dict[str, Demo]) -> None:
+    """The power controller runs 7 min ahead and is set back on 22 July; the dairy's clocks are right."""
+    found = [each for each in findings(demos["emberlund"].out) if each["code"].startswith("clock")]
+    offset, step = sorted(found, key=lambda each: each["code"])
+    assert (offset["export"], offset["words"]["others"], offset["words"]["kind"]) == (
+        "power",
+        "oil_and_air",
+        "offset",
+    )
+    assert abs(offset["numbers"]["offset_s"] - 420.0) <= offset["numbers"]["spread_s"] <= 60.0
+    set_back = demos["emberlund"].window("5")[1][:10]
+    assert offset["from"] < "2026-07-05" and set_back <= offset["until"][:10] <= "2026-07-23"
+    assert step["numbers"]["step_s"] == -420.0 and step["from"].startswith(set_back)
+    assert not [each for each in findings(demos["quillmere"].out) if each["code"].startswith("clock")]
+
+
 def test_a_reason_is_given_only_where_it_is_true(demos: dict[str, Demo]) -> None:
     """Where the sink's temperature is distrusted nobody knows whether the source is hotter than it.
 

@@ -10,6 +10,7 @@ import numpy as np
 
 from auditor.judging.closing import open_balance, withheld_figures
 from auditor.judging.clusters import PERSISTENT, impossible_clusters
+from auditor.judging.conflict_effect import with_effect
 from auditor.judging.range_units import range_questions
 from auditor.judging.recogniser import Meters, meter_questions
 from auditor.judging.steps import steps_in_figures
@@ -87,7 +88,11 @@ def judge(
     earlier : iterable of Finding
         Findings of reading, cleaning and metering.
     """
-    findings = [_sized(finding, powers, ticks) for finding in earlier]
+    quantities = {name: tag.quantity for name, tag in settings.tags.items()}
+    findings = [
+        _sized(with_effect(finding, quantities.get(finding.tag or "", ""), powers, ticks), powers, ticks)
+        for finding in earlier
+    ]
     findings += [
         *unit_suspects(findings, ticks, settings.tags),
         *range_questions(findings, ticks, settings.tags),

@@ -195,7 +195,12 @@ class FileReader:
         if in_gap.any():
             tally.skipped_hour_line = tally.skipped_hour_line or int(line[np.argmax(in_gap)])
             tally.skipped_hour += int(in_gap.sum())
-        hour = np.flatnonzero(stamps.good & (second_us > 0))
+        low_us, high_us = self._file.believed_us
+        reset = is_good & ((instants_us < low_us) | (instants_us >= high_us))
+        if reset.any():
+            is_good &= ~reset
+            tally.see_reset(instants_us, line, reset, is_good)
+        hour = np.flatnonzero(stamps.good & ~reset & (second_us > 0))
         if hour.size:
             known = np.zeros(hour.size, np.bool_)
             if export.repeated_hour == "by order":

@@ -14,6 +14,7 @@ from auditor.log_reading.clocks import Clock, clock_of
 from auditor.log_reading.dialect import Dialect, find_dialect, heading_key, split_fields
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.listing import Claim
+from auditor.log_reading.resets import StampDays, stamp_days
 from auditor.log_reading.samples import Sample, Sampled, line_at, take_samples
 from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words
 from auditor.log_reading.table import Columns, Learnt, Shape, as_texts, distinct, read_columns
@@ -51,6 +52,8 @@ class Look:
     first_us: int
     """Earliest and latest stamp of the samples; the wrong way round when there is none."""
     last_us: int
+    days: tuple[StampDays, ...]
+    """Stamps of the samples by day: a clock that was reset shows there."""
     is_whole: bool
     """All of it was looked at."""
     is_ordered: bool
@@ -129,6 +132,7 @@ def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | tup
         head=tuple(head),
         first_us=seen.first_us,
         last_us=seen.last_us,
+        days=tuple(seen.days),
         is_whole=sampled.is_whole,
         is_ordered=seen.falls == 0,
         is_descending=seen.rises == 0 and seen.falls > 0,
@@ -151,6 +155,7 @@ class _Seen:
         self._clock = clock_of(export.clock)
         self._before_us: int | None = None
         self.first_us, self.last_us = np.iinfo(np.int64).max, np.iinfo(np.int64).min
+        self.days: list[StampDays] = []
         self.falls, self.rises = 0, 0
         self.stamp_format = ""
         self.names: dict[str, None] = {}
@@ -192,6 +197,9 @@ class _Seen:
             self.stamp_format = words[0] + (", the time of day in a column of its own" if time else "")
         self.first_us = min(self.first_us, int(utc_us[good].min()))
         self.last_us = max(self.last_us, int((utc_us + second_us)[good].max()))
+        self.days.append(stamp_days(utc_us[good]))
+        if second_us[good].any():
+            self.days.append(stamp_days((utc_us + second_us)[good]))
         # A second pass of the repeated hour is no fall: the span it may cover counts as level.
         early, late = utc_us[good], (utc_us + second_us)[good]
         if self._before_us is not None:

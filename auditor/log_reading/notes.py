@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,7 +14,18 @@ from auditor.records.findings import Finding, FindingCode
 from auditor.records.samples import ReadingNote
 
 _STEPS_TOLD = 3
+_FEW = 3
 _US = 1_000_000
+
+
+class Step(NamedTuple):
+    """A step back of a clock."""
+
+    error_us: int
+    """By how much it was set: the fall and the usual step, negative."""
+    line: int
+    before_us: int
+    after_us: int
 
 
 @dataclass
@@ -28,8 +40,16 @@ class Tally:
     first_us: int | None = None
     last_us: int | None = None
     falls: int = 0
-    steps: list[tuple[int, int, int]] = field(default_factory=list)
-    """The largest falls: size [us], line, stamp before."""
+    steps: list[Step] = field(default_factory=list)
+    """The largest steps back of the clock."""
+    set_back: int = 0
+    """How often the clock stepped back; the other falls are rows that were written late."""
+    usual_us: int = 0
+    """Usual step from row to row."""
+    resets: int = 0
+    """Rows of a clock that was reset."""
+    first_reset: tuple[int, int, int] = (0, 0, 0)
+    """Line, stamp [us] and error of the clock [us] of the first of them."""
     repeated: int = 0
     """Rows in a repeated hour that the order of lines resolved."""
     dropped: int = 0
@@ -65,11 +85,52 @@ class Tally:
             instants_us = np.concatenate([[before[1]], instants_us])
             line = np.concatenate([[before[0]], line])
         steps = np.diff(instants_us)
+        if (rises := steps[steps > 0]).size >= _FEW or not self.usual_us:
+            self.usual_us = int(np.median(rises)) if rises.size else self.usual_us
         falls = np.flatnonzero(steps < 0)
         self.falls += falls.size
-        for at in falls[np.argsort(steps[falls], kind="stable")[:_STEPS_TOLD]].tolist():
-            self.steps.append((int(steps[at]), int(line[at + 1]), int(instants_us[at])))
+        set_back = falls[self._are_steps(instants_us, falls)]
+        self.set_back += set_back.size
+        for at in set_back[np.argsort(steps[set_back], kind="stable")[:_STEPS_TOLD]].tolist():
+            error_us = int(steps[at]) - self.usual_us
+            self.steps.append(
+                Step(error_us, int(line[at + 1]), int(instants_us[at]), int(instants_us[at + 1]))
+            )
         self.steps = sorted(self.steps)[:_STEPS_TOLD]
+
+    def _are_steps(self, instants_us: NDArray[np.int64], falls: NDArray[np.int64]) -> NDArray[np.bool_]:
+        """Tell steps of the clock from rows that were only written late.
+
+        A clock that was set back runs again over the time that it had shown; after late rows the stamps
+        leap back to where they had been.
+        """
+        reached_us = np.maximum.accumulate(instants_us)
+        from_front = instants_us[falls] == reached_us[falls]
+        back_at = np.searchsorted(reached_us, instants_us[falls], side="right")
+        is_back = back_at < instants_us.size
+        back_at = np.minimum(back_at, instants_us.size - 1)
+        leap_us = instants_us[back_at] - instants_us[back_at - 1]
+        late: NDArray[np.bool_] = is_back & (leap_us > 2 * self.usual_us)
+        is_step: NDArray[np.bool_] = from_front & ~late
+        return is_step
+
+    def see_reset(
+        self,
+        instants_us: NDArray[np.int64],
+        line: NDArray[np.int64],
+        reset: NDArray[np.bool_],
+        good: NDArray[np.bool_],
+    ) -> None:
+        """Count rows of a clock that was reset, and keep the first with the error of its clock."""
+        if not self.resets:
+            first = int(np.argmax(reset))
+            earlier = np.flatnonzero(good[:first])
+            before_us = int(instants_us[earlier[-1]]) if earlier.size else self.last_us
+            steps = np.diff(instants_us[good])
+            usual_us = self.usual_us or int(np.median(steps[steps > 0]) if (steps > 0).any() else 0)
+            due_us = int(instants_us[first]) if before_us is None else before_us + usual_us
+            self.first_reset = int(line[first]), int(instants_us[first]), int(instants_us[first]) - due_us
+        self.resets += int(reset.sum())
 
     def note(self, export: str, sha256: str) -> ReadingNote:
         """Close the account."""
@@ -79,6 +140,10 @@ class Tally:
         if self.repeated:
             evidence.append(
                 f"{self.repeated} rows of a repeated hour: both passes told apart by the order of lines"
+            )
+        if self.falls > self.set_back and not file.is_descending:
+            evidence.append(
+                f"its stamps fall {self.falls - self.set_back} times for rows that were written late"
             )
         if self.outside:
             evidence.append(f"{self.outside} rows lie outside the stretch that was asked for")
@@ -117,7 +182,7 @@ class Tally:
     def _own_findings(self, export: str) -> list[Finding]:
         path = self.file.path
         found = []
-        others = self.rejected - self.dropped - self.skipped_hour - self.torn
+        others = self.rejected - self.dropped - self.skipped_hour - self.torn - self.resets
         if others and self.first_rejected is not None:
             line, text = self.first_rejected
             found.append(
@@ -152,19 +217,35 @@ class Tally:
                     words={"sign": "stamps in the hour that summer time skips"},
                 )
             )
-        for step_us, line, before_us in [] if self.file.is_descending else self.steps:
+        if self.resets:
+            found.append(self._reset_finding(export))
+        for step in [] if self.file.is_descending else self.steps:
             found.append(
                 Finding(
                     FindingCode.CLOCK_STEP,
                     export=export,
                     file=path,
-                    line=line,
-                    start_us=before_us + step_us,
-                    end_us=before_us,
-                    numbers={"step_s": step_us / _US, "count": self.falls},
+                    line=step.line,
+                    start_us=step.after_us,
+                    end_us=step.before_us,
+                    numbers={"step_s": step.error_us / _US, "count": self.set_back},
                 )
             )
         return found
+
+    def _reset_finding(self, export: str) -> Finding:
+        line, stamp_us, error_us = self.first_reset
+        numbers = {"count": float(self.resets), "reset": float(self.resets)}
+        if error_us:
+            numbers["step_s"] = error_us / _US
+        return Finding(
+            FindingCode.CLOCK_STEP,
+            export=export,
+            file=self.file.path,
+            line=line,
+            numbers=numbers,
+            words={"year": str(np.datetime64(stamp_us, "us").astype("datetime64[Y]"))},
+        )
 
 
 def unread_note(file: RecognisedFile, export: str) -> ReadingNote:

@@ -11,6 +11,7 @@ from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
 from auditor.log_reading.look import Contradiction, Look, look_at
+from auditor.log_reading.resets import ANY_TIME, believed_range, range_of
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, Tag
@@ -34,6 +35,8 @@ class RecognisedFile:
     is_descending: bool
     stamp_format: str
     evidence: tuple[str, ...]
+    believed_us: tuple[int, int] = ANY_TIME
+    """Stamps outside are those of a clock that was reset."""
 
     @property
     def path(self) -> str:
@@ -202,9 +205,10 @@ class _Pool:
     def files(self) -> tuple[RecognisedFile, ...]:
         """Return the files to be read, in order of precedence."""
         looks = sorted(self.looks, key=lambda look: (look.claim.pattern, look.claim.stored.path))
-        return tuple(self._file(look) for look in looks)
+        believed_us = believed_range([days for look in looks for days in look.days])
+        return tuple(self._file(look, believed_us) for look in looks)
 
-    def _file(self, look: Look) -> RecognisedFile:
+    def _file(self, look: Look, believed_us: tuple[int, int]) -> RecognisedFile:
         missing = (
             []
             if look.dialect.is_long
@@ -227,12 +231,14 @@ class _Pool:
             evidence.append(
                 "its rows run from new to old" if look.is_descending else "its rows are not in order of time"
             )
+        first_us, last_us = range_of(look.days, believed_us)
         return RecognisedFile(
             claim=look.claim,
             encoding=look.encoding,
             dialect=look.dialect,
-            first_us=look.first_us,
-            last_us=look.last_us,
+            first_us=first_us,
+            last_us=last_us,
+            believed_us=believed_us,
             is_whole=look.is_whole,
             is_ordered=look.is_ordered,
             is_descending=look.is_descending,

@@ -24,7 +24,7 @@ NO_OFFSET = np.iinfo(np.int64).min
 
 DAY_US = 86_400_000_000
 _MOST_SHAPES = 64
-_FIRST_YEAR, _LAST_YEAR = 1990, 2100
+_FIRST_YEAR, _LAST_YEAR = 1970, 2100
 _FIRST_US = 631_152_000_000_000
 """1990-01-01 in microseconds since 1970-01-01; ``_LAST_US`` is 2101-01-01."""
 _LAST_US = 4_133_980_800_000_000
@@ -101,7 +101,7 @@ def read_stamps(columns: Sequence[Texts], order: DateOrder) -> Stamps:
     Returns
     -------
     Stamps
-        Years outside 1990...2100 (a clock that lost its battery) are not good.
+        Years outside 1970...2100 are not good; counted seconds not before 1990, where the wrong unit leads.
     """
     if order in ("epoch seconds", "epoch milliseconds"):
         return _read_part(columns[0], order, "both")

@@ -163,11 +163,22 @@ def _conflict(finding: Finding, plant: Plant) -> Text:
     return (
         f"{subject(finding, plant)} has two values for one stamp",
         f"{many(finding, 'stamp')} {when(finding, plant)} carried values that differ.{rule}"
-        f"{size(finding, 'The choice moves the energy by {}.')}",
+        f"{_choice_moves(finding, plant)}",
         f"Open {place(finding)} beside "
         f"{kept if kept not in (None, finding.file) else 'the lines that repeat it'} and decide which "
         "of them is the original.",
     )
+
+
+def _choice_moves(finding: Finding, plant: Plant) -> str:
+    """Say what the choice is worth: energy and amount of the tag's own, else what passed meanwhile."""
+    declared = plant.tags.get(finding.tag or "")
+    unit = "" if declared is None else declared.si_unit
+    if unit not in ("W", "J") and "effect_J" not in finding.numbers:
+        return size(finding, "About {} passed in that time.")
+    amount, shown = finding.numbers.get("effect_SI_s", math.nan), unit.removesuffix("/s").replace("m3", "m³")
+    in_own = f" ({significant(abs(amount))}\u00a0{shown})" if shown in ("m³", "kg") else ""
+    return size(finding, f"The choice moves the energy by {{}}{in_own}.")
 
 
 def _distrusted(finding: Finding, plant: Plant) -> Text:

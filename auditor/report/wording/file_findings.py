@@ -29,26 +29,36 @@ def _clock_step(finding: Finding, plant: Plant) -> Text:
             "order, and were rejected.",
             "Split the file where its stamps fall, or ask whether the logger's clock was set.",
         )
+    if "reset" in finding.numbers:
+        year = finding.words.get("year", "another year")
+        off = f", {_years(step)} off" if math.isfinite(step) else ""
+        return (
+            f"the clock of {_export(finding)} was reset to {year}",
+            f"{many(finding, 'row')} of {_file(finding)} carry stamps of {year}{off}, from {place(finding)} "
+            "on. When they were written, the file does not tell; they were rejected.",
+            "Change the battery of the logger's clock and set it; ask its maker whether these rows can be "
+            "dated again.",
+        )
     moved = f" by {duration(abs(step))} {'back' if step < 0 else 'forward'}" if math.isfinite(step) else ""
     return (
         f"the clock of {_export(finding)} was set",
-        f"Its stamps jump{moved} {when(finding, plant)} ({place(finding)}). Which side of the jump is "
-        "right, the file does not tell.",
+        f"Its stamps jump{moved} {when(finding, plant)} ({place(finding)}), the usual step between two rows "
+        "counted in. Which side of the jump is right, the file does not tell.",
         "Ask who set the logger's clock that day, and compare a start or stop of the machine in two exports.",
     )
 
 
+def _years(seconds: float) -> str:
+    """``55.5 years``: how far a clock is off that was reset."""
+    return f"{abs(seconds) / 31_556_952.0:.1f}\u00a0years"
+
+
 def _clock_offset(finding: Finding, plant: Plant) -> Text:
+    if "others" in finding.words:
+        return _clocks_apart(finding, plant)
     sign = finding.words.get("sign", "")
-    offset = finding.numbers.get("offset_s", math.nan)
-    if math.isfinite(offset):
-        told = (
-            f"Its stamps are about {duration(abs(offset))} {'late' if offset > 0 else 'early'} "
-            f"{when(finding, plant)}."
-        )
-    elif sign:
-        told = f"It has {many(finding, 'row')} with {sign} ({place(finding)})."
-    else:
+    told = f"It has {many(finding, 'row')} with {sign} ({place(finding)})."
+    if not sign:
         told = f"Its stamps do not fit those of the other exports {when(finding, plant)}."
     return (
         f"{_export(finding)} seems to run on another clock",
@@ -56,6 +66,56 @@ def _clock_offset(finding: Finding, plant: Plant) -> Text:
         "Compare the moment of one start or stop in two exports, then correct the export's clock in the "
         "plant file.",
     )
+
+
+def _apart(seconds: float) -> str:
+    """``7.2 min``: an offset between clocks, tenths of a minute."""
+    return f"{abs(seconds) / 60.0:.1f}\u00a0min"
+
+
+def _clocks_apart(finding: Finding, plant: Plant) -> Text:
+    """Tell of two exports that stamp the same events differently."""
+    offset, spread = (finding.numbers.get(name, math.nan) for name in ("offset_s", "spread_s"))
+    own, others = _export(finding), names.listing(finding.words["others"].split(", "))
+    tags = names.listing(
+        [names.tag(plant, name) for name in finding.words.get("tags", "").split(", ") if name]
+    )
+    seen = f"{count(finding.numbers.get('days', 0.0), 'day')} {when(finding, plant)}"
+    side = "later" if offset > 0 else "earlier"
+    kind = finding.words.get("kind")
+    if kind == "drift":
+        first, last = (finding.numbers.get(name, math.nan) for name in ("first_s", "last_s"))
+        return (
+            f"the clock of {own} drifts against {others}",
+            f"From {_signed(first)} to {_signed(last)} (plus: its stamps are the later ones) on {seen}, by "
+            f"{_apart(finding.numbers.get('drift_s_per_day', math.nan) * 30.0)} in 30 days; seen in {tags}. "
+            "No stamp was shifted.",
+            "Have the logger's clock set and tied to a time server; compare one start or stop in both "
+            "exports.",
+        )
+    told = (
+        f"{own} stamps the same events {_apart(offset)} {side} (± {_apart(spread)}) than {others}, "
+        f"on {seen}; seen in {tags}."
+    )
+    if kind == "time rule":
+        rule = 60 * round(abs(offset) / 3600.0)
+        return (
+            f"{own} looks {rule}\u00a0min off (time rule?)",
+            f"{told} So much lies between summer time, winter time and UTC. No stamp was shifted.",
+            "Ask whether this logger follows summer time, and correct the key clock of "
+            f"exports.{finding.export} in the plant file.",
+        )
+    return (
+        f"{own} and {others} are {_apart(offset)} apart",
+        f"{told} Which of them is right, the logs do not tell; a meter that reports late looks the same. "
+        "No stamp was shifted.",
+        "Compare the moment of one start or stop in both exports, and ask whether a logger's clock was set.",
+    )
+
+
+def _signed(seconds: float) -> str:
+    mark = "+" if seconds >= 0 else "\u2212"
+    return f"{mark}{_apart(seconds)}"
 
 
 def _repeated_hour(finding: Finding, plant: Plant) -> Text:
