@@ -12,7 +12,8 @@ from auditor.cleaning.conflicts import Conflicts, conflicts_of
 from auditor.cleaning.counter_sums import CounterSums
 from auditor.cleaning.equal_runs import EqualRun, extend_runs
 from auditor.cleaning.events import Event, EventLog
-from auditor.cleaning.judge import Judged, judge, rows_where, stamp_shift_us
+from auditor.cleaning.dated import stamp_shift_us
+from auditor.cleaning.judge import Judged, judge, rows_where
 from auditor.cleaning.spans import cut
 from auditor.cleaning.sums import Isolated, Sums
 from auditor.records.period import MICROSECONDS

@@ -31,7 +31,12 @@ _TIERS = (
     (FindingCode.CLOCK_STEP, FindingCode.CLOCK_OFFSET, FindingCode.STEP_IN_FIGURE),
     (FindingCode.WITHHELD_FIGURE, FindingCode.MISSING_EXPORT, FindingCode.GAP, FindingCode.COUNTER_RESET),
     (FindingCode.OUT_OF_RANGE, FindingCode.CONFLICT, FindingCode.CREEP_AT_STANDSTILL),
-    (FindingCode.HEATING_VALUE_CHANGED, FindingCode.REPEATED_HOUR, FindingCode.REJECTED_LINES),
+    (
+        FindingCode.HEATING_VALUE_CHANGED,
+        FindingCode.REPEATED_HOUR,
+        FindingCode.REJECTED_LINES,
+        FindingCode.RENAMED_COLUMN,
+    ),
 )
 """Findings of an earlier tier stand first; within a tier the larger energy; anything else last."""
 

@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
+from auditor.log_reading.aliases import by_heading, tag_of, unread_tags
 from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key, unit_faults
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
@@ -68,6 +69,7 @@ class Recognition:
     logs: Path
     exports: Mapping[str, Export]
     tags: Mapping[str, Tag]
+    """With a tag of its own for every further heading, as :func:`~auditor.log_reading.aliases.by_heading`."""
     files: Mapping[str, tuple[RecognisedFile, ...]]
     """Per export, in order of precedence: by pattern, then by path."""
     unopened: tuple[UnopenedFile, ...]
@@ -104,6 +106,7 @@ def recognise(logs: Path, exports: Mapping[str, Export], tags: Mapping[str, Tag]
         or bound and doubled, a unit row that differs, a date order or decimal mark that the data
         contradict, an export whose stamps cannot be read.
     """
+    exports, tags = by_heading(exports, tags)
     listing = list_logs(logs, exports)
     faults: list[Fault] = []
     findings: list[Finding] = []
@@ -208,7 +211,7 @@ class _Pool:
         missing = (
             []
             if look.dialect.is_long
-            else [tag for tag in self.export.tags if tag not in look.dialect.columns]
+            else unread_tags(self.export.tags, look.dialect.columns)
         )
         evidence = [f"{look.encoding.shown}: {look.encoding.evidence}", *look.dialect.evidence]
         evidence += unit_faults(look.dialect, look.head, look.claim.stored.path, self.tags)[1]
@@ -252,7 +255,7 @@ class _Pool:
             wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key), 0) for key in keys]
         else:
             wanted += [
-                (f"{where}.tags.{name}.column", tag.column, tag.line) for name, tag in self.tags.items()
+                (f"{where}.tags.{name}.column", tag.column, tag.line) for name, tag in self._lost(headings)
             ]
         faults = [
             _no_heading((line, key), name, names, self)
@@ -263,10 +266,14 @@ class _Pool:
             points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
             faults += [
                 _no_heading((tag.line, f"{where}.tags.{name}.column"), tag.column, points, self)
-                for name, tag in self.tags.items()
-                if heading_key(tag.column) not in points
+                for name, tag in self._lost(points)
             ]
         return faults
+
+    def _lost(self, headings: Sequence[str]) -> list[tuple[str, Tag]]:
+        """Tags of which none of the headings was found, with the first one."""
+        found = {tag_of(name) for name, tag in self.tags.items() if heading_key(tag.column) in headings}
+        return [(name, tag) for name, tag in self.tags.items() if tag_of(name) == name and name not in found]
 
     def _contradictions(self) -> list[Fault]:
         faults = []

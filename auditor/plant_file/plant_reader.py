@@ -117,7 +117,7 @@ def _resolve(part: PlantPart, path: Path, text: str, book: FaultBook) -> Plant:
     zone = None if part.site is None else part.site.zone
     export_parts = part.exports or {}
     site, rules = resolve_site(part.site, book), resolve_rules(part.rules, book)
-    tags = resolve_tags(export_parts, book)
+    tags = resolve_tags(export_parts, zone, book)
     exports = {name: resolve_export(name, export, book) for name, export in export_parts.items()}
     check_patterns(export_parts, book)
     check_barometer(part.site, tags, book)

@@ -63,7 +63,7 @@ def subject(finding: Finding, plant: Plant) -> str:
     return f"the export {finding.export}" if finding.export is not None else "a tag"
 
 
-def _value(finding: Finding, plant: Plant, si: float) -> str:
+def value(finding: Finding, plant: Plant, si: float) -> str:
     """Write a value in the unit of the finding's tag, four digits."""
     declared = plant.tags.get(finding.tag or "")
     if declared is None or not math.isfinite(si):
@@ -92,7 +92,7 @@ def _gap(finding: Finding, plant: Plant) -> Text:
 
 
 def _frozen(finding: Finding, plant: Plant) -> Text:
-    at = _value(finding, plant, finding.numbers.get("value_SI", math.nan))
+    at = value(finding, plant, finding.numbers.get("value_SI", math.nan))
     return (
         f"{subject(finding, plant)} stood still",
         f"It showed one and the same value{f', {at},' if at else ''} {when(finding, plant)} "
