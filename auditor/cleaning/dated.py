@@ -13,7 +13,6 @@ if TYPE_CHECKING:
     from auditor.records.plant import Tag
 
 
-
 def stamp_shift_us(tag: Tag) -> int:
     """Return what to take off a stamp to find the tick it belongs to.
 

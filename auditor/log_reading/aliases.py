@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -81,8 +82,10 @@ class Folding:
         """Fold the pieces of one file, and tell in its note what was left out."""
         outside = dict.fromkeys(self.export.tags, 0)
         for piece in pieces:
-            yield _amended(piece, self._headings, outside) if isinstance(piece, ReadingNote) else (
-                self._folded(piece, outside)
+            yield (
+                _amended(piece, self._headings, outside)
+                if isinstance(piece, ReadingNote)
+                else (self._folded(piece, outside))
             )
 
     def joins(self) -> list[Finding]:
@@ -90,7 +93,7 @@ class Folding:
         found = []
         for tag, by_name in self._met.items():
             in_order = sorted(by_name.items(), key=lambda met: (met[1].first[0], met[0]))
-            for (old, before), (new, after) in zip(in_order[:-1], in_order[1:], strict=True):
+            for (old, before), (new, after) in pairwise(in_order):
                 if before.last[0] >= after.first[0]:
                     continue
                 record = self.tags[tag]

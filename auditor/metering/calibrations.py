@@ -43,7 +43,9 @@ def calibrations_of(tag: Tag) -> tuple[Calibration, ...]:
     its calibration).
     """
     began = [(tag.stretches[0][0], "", tag)]
-    began += [(change.from_us, f"@{change.since}", change.tag) for change in tag.changes if change.new_calibration]
+    began += [
+        (change.from_us, f"@{change.since}", change.tag) for change in tag.changes if change.new_calibration
+    ]
     ends = [*(start_us for start_us, _, _ in began[1:]), tag.stretches[-1][1]]
     return tuple(
         Calibration(f"calibration:{tag.name}{since}", then, start_us, end_us)

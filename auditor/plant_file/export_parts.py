@@ -6,6 +6,10 @@ from collections.abc import Mapping
 from types import MappingProxyType
 from typing import Annotated, Any, ClassVar, Literal
 
+from pydantic import GetJsonSchemaHandler
+from pydantic.json_schema import JsonSchemaValue
+from pydantic_core import CoreSchema
+
 from auditor.plant_file.aliases import ColumnHeadings
 from auditor.plant_file.leaves import (
     Clock,
@@ -16,6 +20,7 @@ from auditor.plant_file.leaves import (
     OwnUnitValue,
     Spread,
     StampColumns,
+    TagListFile,
     UnitText,
 )
 from auditor.plant_file.parts import Choice, Part, keys_of, optional, required
@@ -176,6 +181,17 @@ class LongLayoutPart(Part):
 class ExportPart(Part):
     """One kind of export file."""
 
+    @classmethod
+    def __get_pydantic_json_schema__(
+        cls, core_schema: CoreSchema, handler: GetJsonSchemaHandler, /
+    ) -> JsonSchemaValue:
+        """Let a tag list stand in the place of the tags."""
+        schema = super().__get_pydantic_json_schema__(core_schema, handler)
+        body = handler.resolve_ref_schema(schema)
+        body["required"] = [key for key in body["required"] if key != "tags"]
+        body["anyOf"] = [{"required": ["tags"]}, {"required": ["tag_list"]}]
+        return schema
+
     files: FilePatterns = required(
         "patterns below logs/; where two of them hold the same stamp, the earlier one wins", ["power/*.csv"]
     )
@@ -205,6 +221,9 @@ class ExportPart(Part):
     )
     when_stamps_repeat: Literal["keep first", "keep later", "reject both"] = optional(
         "which of several different values of one stamp is kept", "keep later", default="reject both"
+    )
+    tag_list: TagListFile | None = optional(
+        "CSV file beside the plant file with one row per tag, the keys of a tag as columns", "tags.csv"
     )
     tags: dict[str, Annotated[AnyTag, Choice(tag_form)]] = required(
         "the tags read from this export, by the names used in this file",

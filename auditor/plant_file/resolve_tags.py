@@ -33,7 +33,7 @@ from auditor.plant_file.quantities import (
 )
 from auditor.plant_file.tag_changes import resolve_changes
 from auditor.plant_file.written import shown
-from auditor.records.plant import Tag
+from auditor.records.plant import Tag, TagChange
 from auditor.records.uncertain import Uncertainty
 
 REFERENCE = "reference"
@@ -66,7 +66,7 @@ def _dated_tag(name: str, part: AnyTag, zone: str | None, path: KeyPath, book: F
     if tag is None:
         return None
     headings = resolve_headings(part.column, zone, path, book)
-    changes = ()
+    changes: tuple[TagChange, ...] = ()
     if isinstance(part, NumberTag):
         changes = resolve_changes(tag, part, zone, (path, book), _resolve_tag)
     return replace(tag, headings=headings, changes=changes) if book.clean(path) else None
@@ -136,6 +136,7 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
         pressure=part.pressure if isinstance(part, InstantTag) else None,
         basis=part.basis if isinstance(part, InstantTag) else None,
         line=book.line(path),
+        declared_in=book.file(path),
     )
     return tag if book.clean(path) else None
 
@@ -164,6 +165,7 @@ def _state(name: str, part: StateTag, path: KeyPath, book: FaultBook) -> Tag | N
         calibration=None,
         states=dict(part.states),
         line=book.line(path),
+        declared_in=book.file(path),
     )
 
 

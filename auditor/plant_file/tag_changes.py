@@ -20,7 +20,9 @@ if TYPE_CHECKING:
 class NumberTagChange(Part):
     """What may change of every tag whose cells hold numbers; a key that is not written goes on as before."""
 
-    from_: Moment = required("moment from which this holds, until the next change", "2026-07-10", alias="from")
+    from_: Moment = required(
+        "moment from which this holds, until the next change", "2026-07-10", alias="from"
+    )
     unit: UnitText | None = optional("unit of the logged number from then on", "K")
     standard: Spread | None = optional(
         "one standard uncertainty from then on: says that another instrument, or a new calibration, reads",
@@ -70,7 +72,7 @@ _FIELDS = {
 }
 """Fields of the record that a key decides; any other key decides the field of its own name."""
 
-Resolve = Callable[[str, "NumberTag", KeyPath, FaultBook], Tag | None]
+Resolve = Callable[[str, Any, KeyPath, FaultBook], Tag | None]
 
 
 def resolve_changes(

@@ -162,6 +162,8 @@ class Tag:
     """Raw text to state name, for ``between = "state"``."""
     line: int = 0
     """Line of the plant file, for messages."""
+    declared_in: str = "plant.toml"
+    """The plant file, or the tag list that holds its row."""
     headings: tuple[Heading, ...] = ()
     """Every heading of its column, in the order of the plant file; empty: ``column`` alone, always."""
     changes: tuple[TagChange, ...] = ()
@@ -306,3 +308,10 @@ class Plant:
     machines: Mapping[str, Machine]
     """In the order of the plant file."""
     distrust: tuple[Distrust, ...]
+    tag_lists: tuple[tuple[str, str], ...] = ()
+    """Tag lists beside the plant file, each with its name and its text as read."""
+
+    @property
+    def whole_text(self) -> str:
+        """The plant file with its tag lists behind it: what its digest is taken of."""
+        return self.text + "".join(f"\n# {name}\n{text}" for name, text in self.tag_lists)
