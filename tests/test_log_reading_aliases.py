@@ -67,7 +67,7 @@ def test_both_headings_in_one_file_are_compared_row_by_row(tmp_path: Path, order
 
 
 def test_dates_decide_which_heading_is_the_tags(tmp_path: Path) -> None:
-    """Outside its dates a heading is bound to nothing: its cells, words too, are those of an unclaimed column."""
+    """Outside its dates a heading is bound to nothing: its cells are those of an unclaimed column."""
     text = lines("t,PT101,PT-101A,F", "00,1.0,9.9,5", "01,1.1,9.9,6", "02,8.8,1.3,7", "03,Fault,1.4,8")
     names = (Heading("PT101", until_us=at(2)), Heading("PT-101A", from_us=at(2)))
     got = read(tmp_path, {"a.csv": text}, declared(*names))

@@ -8,7 +8,17 @@ from pathlib import Path
 import numpy as np
 import pytest
 from metering_factory import START_US, TICK_US, make_machine, make_settings, make_tag, make_ticks, stream_W
-from site_factory import GAS_ENGINE, POWER_TAG, audited, changed, export, figures, findings, instants, statement
+from site_factory import (
+    GAS_ENGINE,
+    POWER_TAG,
+    audited,
+    changed,
+    export,
+    figures,
+    findings,
+    instants,
+    statement,
+)
 
 from auditor.metering import meter, meter_moved
 from auditor.records.machines import Power, Role, Running
@@ -27,7 +37,9 @@ def test_each_calibration_moves_its_own_stretch() -> None:
     """Moving the first leaves the ticks after the exchange as they are, and the other way round."""
     tag = exchanged(make_tag("power", relative=0.01), 2, 0.02)
     machine = make_machine(
-        "m", {"power": (Role.WORK_OUT, Power("power", "generator terminals"))}, running=Running("power", 1.0, None)
+        "m",
+        {"power": (Role.WORK_OUT, Power("power", "generator terminals"))},
+        running=Running("power", 1.0, None),
     )
     settings = make_settings([tag], machine)
     ticks = make_ticks({"power": 100.0}, ticks=4)
@@ -43,7 +55,9 @@ def test_an_exchange_outside_the_period_is_no_source() -> None:
     """Only the instrument that was read in the period can be off."""
     tag = exchanged(make_tag("power", relative=0.01), -5, 0.02)
     machine = make_machine(
-        "m", {"power": (Role.WORK_OUT, Power("power", "generator terminals"))}, running=Running("power", 1.0, None)
+        "m",
+        {"power": (Role.WORK_OUT, Power("power", "generator terminals"))},
+        running=Running("power", 1.0, None),
     )
     table, _ = meter(make_ticks({"power": 100.0}, ticks=4), make_settings([tag], machine))
     assert [source.key for source in table.all_sources] == ["calibration:power@2025-10-02"]

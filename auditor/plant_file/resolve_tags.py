@@ -65,7 +65,7 @@ def _dated_tag(name: str, part: AnyTag, zone: str | None, path: KeyPath, book: F
     tag = _resolve_tag(name, part, path, book)
     if tag is None:
         return None
-    headings = resolve_headings(part.column, zone, path, book)
+    headings = resolve_headings(part.column or (), zone, path, book)
     changes: tuple[TagChange, ...] = ()
     if isinstance(part, NumberTag):
         changes = resolve_changes(tag, part, zone, (path, book), _resolve_tag)
@@ -102,6 +102,7 @@ def _check_column(
 
 
 def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag | None:
+    """Make the record, to be used where nothing below its path is at fault."""
     if isinstance(part, StateTag):
         return _state(name, part, path, book)
     if isinstance(part, UndecidedTag) or part.unit is None:
@@ -110,7 +111,7 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
     _check_quantity(part, own.quantity, path, book)
     reader = _OwnUnit(part, own.quantity, path, book)
     calibration = reader.calibration()
-    tag = Tag(
+    return Tag(
         name=name,
         export=str(path[1]),
         column=part.column[0].name if part.column else "",
@@ -138,7 +139,6 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
         line=book.line(path),
         declared_in=book.file(path),
     )
-    return tag if book.clean(path) else None
 
 
 def _state(name: str, part: StateTag, path: KeyPath, book: FaultBook) -> Tag | None:

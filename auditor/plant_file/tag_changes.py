@@ -100,7 +100,7 @@ def resolve_changes(
                 f'"{then.unit}" is a unit of {then.quantity}, but the tag measures {tag.quantity}',
                 "declare another tag for another quantity",
             )
-        elif then is not None:
+        elif then is not None and book.clean(at):
             keys = _written(change)
             fields = [field for key in keys for field in _FIELDS.get(key, (key,))]
             merged = replace(before, **{field: getattr(then, field) for field in fields})

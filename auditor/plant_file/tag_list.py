@@ -22,6 +22,7 @@ from auditor.plant_file.faults import FaultBook, UnusableError, choices
 from auditor.plant_file.key_lines import KeyPath
 from auditor.plant_file.leaves import tag_list_file
 from auditor.plant_file.parts import keys_of
+from auditor.plant_file.quantities import Amount
 from auditor.plant_file.written import shown
 from auditor.records.errors import Fault, PlantFileError
 
@@ -71,28 +72,30 @@ def insert_tag_lists(raw: dict[str, Any], folder: Path, book: FaultBook) -> tupl
         file = export.get("tag_list") if isinstance(export, dict) else None
         if not isinstance(file, str) or not isinstance(export.setdefault("tags", {}), dict):
             continue
+        path = ("exports", name, "tag_list")
         try:
-            tag_list_file(file)
-        except UnusableError:
-            del export["tags"]
-            continue
-        found[file] = _text(folder / file, file, name)
+            found[file] = _text(folder / tag_list_file(file), file)
+        except UnusableError as unusable:
+            # Without its tags nothing else of the plant makes sense.
+            book.add(path, unusable.found, unusable.fix)
+            book.close()
         _insert(found[file], _List(name, file, book, export["tags"]))
     return tuple(found.items())
 
 
-def _text(path: Path, file: str, export: str) -> str:
+def _text(path: Path, file: str) -> str:
     try:
         return path.read_bytes().decode("utf-8-sig")
     except OSError as error:
-        found = f"the tag list of the export {export} cannot be read: {error.strerror}"
-        raise PlantFileError(
-            [Fault(file, found, "put it into the site folder, beside plant.toml")]
+        raise UnusableError(
+            f"the tag list {file} cannot be read: {error.strerror}",
+            "put it into the site folder, beside plant.toml",
         ) from error
     except UnicodeDecodeError as error:
-        found = "a character here is not written in UTF-8"
         line = error.object.count(b"\n", 0, error.start) + 1
-        raise PlantFileError([Fault(f"{file}:{line}", found, "save the file again as UTF-8")]) from error
+        raise UnusableError(
+            f"a character in line {line} of {file} is not written in UTF-8", "save the file again as UTF-8"
+        ) from error
 
 
 def _insert(text: str, into: _List) -> None:
@@ -207,11 +210,13 @@ def _values(cells: Mapping[str, str], between: str, line: int, into: _List) -> d
     for key, cell in cells.items():
         if key in _RANGE:
             continue
-        holds_number = key in fields and float in _types(fields[key][1].annotation)
+        types = _types(fields[key][1].annotation) if key in fields else set()
         if key == "states":
             values[key] = dict(_pair(item) for item in cell.split(";") if item.strip())
+        elif float in types:
+            values[key] = _number_or_text(cell, into.decimal_comma)
         else:
-            values[key] = _number_or_text(cell, into.decimal_comma) if holds_number else cell
+            values[key] = _with_point(cell, into.decimal_comma) if Amount in types else cell
     limits = [_number_or_text(cells[key], into.decimal_comma) for key in _RANGE if key in cells]
     if len(limits) == 1:
         missing = next(key for key in _RANGE if key not in cells)
@@ -226,8 +231,12 @@ def _pair(text: str) -> tuple[str, str]:
     return raw.strip(), name.strip()
 
 
+def _with_point(cell: str, decimal_comma: bool) -> str:
+    return _DECIMAL_COMMA.sub(".", cell) if decimal_comma else cell
+
+
 def _number_or_text(cell: str, decimal_comma: bool) -> float | str:
-    text = _DECIMAL_COMMA.sub(".", cell) if decimal_comma else cell
+    text = _with_point(cell, decimal_comma)
     try:
         number = float(text)
     except ValueError:

@@ -81,7 +81,7 @@ def source(plant: Plant, origin: Source) -> str:
         return f"assumed number {origin.name}"
     declared = plant.tags.get(origin.name)
     if origin.kind == "calibration":
-        since = origin.key.partition("@")[2]
+        since = origin.key.removeprefix(f"calibration:{origin.name}").removeprefix("@")
         for change in declared.changes if declared and since else ():
             declared = change.tag if change.since == since else declared
         words = declared.calibration.declared if declared and declared.calibration else ""
