@@ -240,7 +240,7 @@ def audit_period(opened: OpenedSite, period: Period, *, progress: Progress = _si
     return AuditResult(
         version=auditor.__version__,
         plant=plant,
-        plant_sha256=hashlib.sha256(plant.text.encode()).hexdigest(),
+        plant_sha256=hashlib.sha256(plant.whole_text.encode()).hexdigest(),
         period=period,
         period_said="",
         notes=notes,

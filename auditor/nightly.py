@@ -204,10 +204,14 @@ def plant_slice(plant: Plant, period: Period) -> dict[str, Any]:
         entry for entry in plant.distrust if entry.start_us < period.end_us and entry.end_us > period.start_us
     ]
     fuels = {name: _dated(fuel, period) for name, fuel in plant.fuels.items()}
-    slim = dataclasses.replace(plant, distrust=tuple(distrust), fuels=fuels, text="")
+    tags = {
+        name: dataclasses.replace(tag, changes=tuple(x for x in tag.changes if x.from_us < period.end_us))
+        for name, tag in plant.tags.items()
+    }
+    slim = dataclasses.replace(plant, distrust=tuple(distrust), fuels=fuels, tags=tags, text="")
     plain = _plain(slim)
     assert isinstance(plain, dict)
-    for place in ("path", "folder", "text"):
+    for place in ("path", "folder", "text", "tag_lists"):
         plain.pop(place)
     return plain
 
@@ -220,12 +224,12 @@ def _dated(fuel: Fuel, period: Period) -> Fuel:
 
 
 def _plain(value: object) -> object:
-    """Turn records into plain JSON values; line numbers are not content."""
+    """Turn records into plain JSON values; the places of declarations are not content."""
     if dataclasses.is_dataclass(value) and not isinstance(value, type):
         return {
             field.name: _plain(getattr(value, field.name))
             for field in dataclasses.fields(value)
-            if field.name != "line"
+            if field.name not in ("line", "declared_in")
         }
     if isinstance(value, Mapping):
         return {str(key): _plain(item) for key, item in value.items()}

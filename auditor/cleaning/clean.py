@@ -130,6 +130,9 @@ def _table(tallies: Mapping[str, Tally], book: CellBook, grid: Grid) -> TickTabl
         samples[row] = tally.sums.samples
         series = TickSeries(mean[row], covered_s[row] / grid.tick_s, samples[row], float(native_s[row]))
         noise[row], lag1[row] = tick_noise(tally.tag, series, grid)
+        for change in tally.tag.changes:
+            later = grid.start_us >= change.from_us
+            noise[row, later] = tick_noise(change.tag, series, grid)[0][later]
     seconds = np.array([tally.seconds() for tally in tallies.values()], dtype=np.int64)
     carries = {name: tally.carry for name, tally in tallies.items()}
     return TickTable(

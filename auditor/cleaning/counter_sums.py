@@ -44,7 +44,7 @@ class CounterSums:
     def __init__(self, sums: Sums, distrust_us: tuple[tuple[int, int], ...]) -> None:
         tag = sums.tag
         self.sums = sums
-        self.rule = CounterRule(tag.at_most, tag.full_scale, tag.resolution)
+        self.rule = CounterRule.of(tag)
         self.distrust_us = distrust_us
         self.waiting: Cells | None = None
         """The last reading that stands, then those not decided yet."""
@@ -127,7 +127,10 @@ class CounterSums:
             self.bridges.append(
                 Bridge(self.sums.tag.name, int(start[step]), int(end[step]), float(amount[step]))
             )
-        for step in np.flatnonzero(np.isnan(amount) & trusted & touches).tolist():
+        declared = np.zeros(start.size, dtype=np.bool_)
+        for later in self.rule.later:
+            declared |= later.exchanged & (start < later.from_us) & (end >= later.from_us)
+        for step in np.flatnonzero(np.isnan(amount) & trusted & touches & ~declared).tolist():
             fell = bool(kept.values[step + 1] < kept.values[step])
             new = step + 1
             self.resets.append(

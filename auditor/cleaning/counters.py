@@ -12,6 +12,8 @@ from auditor.records.period import MICROSECONDS
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
+    from auditor.records.plant import Tag
+
 MARGIN = 1.1
 """A counter may run this much faster than its largest believable rate before it is not believed."""
 
@@ -26,6 +28,26 @@ class CounterRule:
     """Reading at which it rolls over to zero; None: it is not known to roll over."""
     resolution: float | None
     """Smallest step; None: the smallest rise met so far takes its place."""
+    later: tuple[LaterRule, ...] = ()
+    """What is believable from a date on, in order of time."""
+
+    @classmethod
+    def of(cls, tag: Tag) -> CounterRule:
+        """Take from a tag what is believable of it."""
+        later = tuple(
+            LaterRule(change.from_us, change.new_calibration, cls.of(change.tag)) for change in tag.changes
+        )
+        return cls(tag.at_most, tag.full_scale, tag.resolution, later)
+
+
+@dataclass(frozen=True)
+class LaterRule:
+    """What is believable of a counter from a date on."""
+
+    from_us: int
+    exchanged: bool
+    """Another meter counts from then on: what it shows says nothing about what the first one showed."""
+    rule: CounterRule
 
 
 @dataclass(frozen=True)
@@ -131,14 +153,25 @@ class _Steps:
 
     def amounts(self, start: NDArray[np.intp], stop: NDArray[np.intp]) -> NDArray[np.float64]:
         """Return what was counted over each step; NaN where it is not believed."""
+        amounts = self._amounts(start, stop, self.rule)
+        for later in self.rule.later:
+            ends_later = self.times[stop] >= later.from_us
+            amounts = np.where(ends_later, self._amounts(start, stop, later.rule), amounts)
+            if later.exchanged:
+                amounts[ends_later & (self.times[start] < later.from_us)] = np.nan
+        return amounts
+
+    def _amounts(
+        self, start: NDArray[np.intp], stop: NDArray[np.intp], rule: CounterRule
+    ) -> NDArray[np.float64]:
         rise = self.values[stop] - self.values[start]
-        if self.rule.at_most is None:
+        if rule.at_most is None:
             return np.where(rise >= 0.0, rise, np.nan)
-        step = self.quanta[stop] if self.rule.resolution is None else self.rule.resolution
+        step = self.quanta[stop] if rule.resolution is None else rule.resolution
         seconds = (self.times[stop] - self.times[start]) / MICROSECONDS
-        most = MARGIN * self.rule.at_most * seconds + np.where(np.isfinite(step), step, 0.0)
-        if self.rule.full_scale is not None:
-            rise = np.where(rise < 0.0, rise + self.rule.full_scale, rise)
+        most = MARGIN * rule.at_most * seconds + np.where(np.isfinite(step), step, 0.0)
+        if rule.full_scale is not None:
+            rise = np.where(rise < 0.0, rise + rule.full_scale, rise)
         return np.where((rise >= 0.0) & (rise <= most), rise, np.nan)
 
     def believes(self, start: int, stop: int) -> bool:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from auditor.cleaning.judge import stamp_shift_us
+from auditor.cleaning.dated import stamp_shift_us
 from auditor.records.period import MICROSECONDS
 from auditor.records.samples import Disposition
 

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from auditor.cleaning.dated import rows_by_stretch, stamp_shift_us
 from auditor.cleaning.repeats import one_event_per_stamp, resolve
 from auditor.cleaning.rows import NO_ROWS
 from auditor.records.samples import Disposition
@@ -56,9 +57,11 @@ def judge(
     finite = view.finite[row_of]
     inside = view.tick_counts(stamp_shift_us(tag)).inside
     windows = _distrusted_rows(view, tag, distrust_us)
-    out = _out_of_range(numbers, finite, tag)
-    if tag.cut_off is not None and tag.between != "counter":
-        numbers[np.abs(numbers) < tag.cut_off] = 0.0
+    out = None
+    for rows, then in rows_by_stretch(tag, view.rows.instants_us):
+        out = _out_of_range((numbers, finite), rows, then, out)
+        if then.cut_off is not None and tag.between != "counter":
+            numbers[rows][np.abs(numbers[rows]) < then.cut_off] = 0.0
     known_rows = 0 if since_us is None else int(np.searchsorted(view.rows.instants_us, since_us, side="left"))
     if not (windows is not None or out is not None or doubts is not None or known_rows) and (
         view.repeats is None and finite.all()
@@ -96,22 +99,23 @@ def judge(
     return Judged(codes, good, None if event.all() else event, resolved)
 
 
-def stamp_shift_us(tag: Tag) -> int:
-    """Return what to take off a stamp to find the tick it belongs to.
-
-    A stamp at the end of its stretch belongs to the time just before it.
-    """
-    return 1 if tag.stamp_marks == "end" and tag.between in ("mean", "amount") else 0
-
-
 def _out_of_range(
-    numbers: NDArray[np.float64], finite: NDArray[np.bool_], tag: Tag
+    cells: tuple[NDArray[np.float64], NDArray[np.bool_]],
+    rows: slice,
+    tag: Tag,
+    known: NDArray[np.bool_] | None,
 ) -> NDArray[np.bool_] | None:
+    """Add the numbers of some rows that are not believable to those known; None: none are."""
     if tag.believable is None:
-        return None
+        return known
+    numbers, finite = cells
     low, high = tag.believable
-    out = finite & ~((numbers >= low) & (numbers <= high))
-    return out if out.any() else None
+    here = finite[rows] & ~((numbers[rows] >= low) & (numbers[rows] <= high))
+    if not here.any():
+        return known
+    out = np.zeros(finite.size, dtype=np.bool_) if known is None else known
+    out[rows] = here
+    return out
 
 
 def _distrusted_rows(

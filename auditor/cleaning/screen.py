@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from auditor.cleaning.judge import stamp_shift_us
+from auditor.cleaning.dated import stamp_shift_us
 from auditor.cleaning.rates import slow_enough
 from auditor.cleaning.rows import joined
 from auditor.cleaning.spikes import AHEAD, BEHIND, far_from_neighbours

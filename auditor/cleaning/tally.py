@@ -10,10 +10,11 @@ from auditor.cleaning.cells import Cells
 from auditor.cleaning.chain import Chain, broken_chain
 from auditor.cleaning.conflicts import Conflicts, conflicts_of
 from auditor.cleaning.counter_sums import CounterSums
+from auditor.cleaning.dated import stamp_shift_us
 from auditor.cleaning.equal_runs import EqualRun, extend_runs
 from auditor.cleaning.events import Event, EventLog
 from auditor.cleaning.impossible_zeros import zero_marks
-from auditor.cleaning.judge import Judged, judge, rows_where, stamp_shift_us
+from auditor.cleaning.judge import Judged, judge, rows_where
 from auditor.cleaning.range_ends import range_end_marks
 from auditor.cleaning.spans import cut
 from auditor.cleaning.sums import Isolated, Sums

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from auditor.cleaning.dated import rows_by_stretch
 from auditor.cleaning.repeats import find_repeats
 from auditor.cleaning.spans import Spans, cut
 from auditor.records.period import MICROSECONDS
@@ -58,6 +59,9 @@ class View:
         np.multiply(rows.raw, scale, out=self.numbers[:, 1:])
         if offset.any():
             self.numbers[:, 1:] += offset
+        for row, tag in enumerate(tags):
+            for stretch, then in rows_by_stretch(tag, rows.instants_us) if tag.changes else ():
+                self.numbers[row, 1:][stretch] = then.scale * rows.raw[row, stretch] + then.offset
         self.repeats = find_repeats(rows.instants_us, rows.pattern, export.when_stamps_repeat)
         self._events: dict[tuple[bytes, int | None], Events] = {}
         self._spans: dict[tuple[int, int], Spans] = {}

@@ -36,7 +36,12 @@ _TIERS = (
     (FindingCode.OUT_OF_RANGE, FindingCode.CONFLICT, FindingCode.CREEP_AT_STANDSTILL),
     (FindingCode.ZERO_WHILE_RUNNING, FindingCode.AT_RANGE_END, FindingCode.STOOD_LONG),
     (FindingCode.SPIKES, FindingCode.CHANGED_TOO_FAST, FindingCode.COARSE_STEPS),
-    (FindingCode.HEATING_VALUE_CHANGED, FindingCode.REPEATED_HOUR, FindingCode.REJECTED_LINES),
+    (
+        FindingCode.HEATING_VALUE_CHANGED,
+        FindingCode.REPEATED_HOUR,
+        FindingCode.REJECTED_LINES,
+        FindingCode.RENAMED_COLUMN,
+    ),
 )
 """Findings of an earlier tier stand first; within a tier the larger energy; anything else last."""
 

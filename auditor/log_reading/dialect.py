@@ -153,6 +153,7 @@ def unit_faults(
             same += 1
         else:
             where = f"logs/{file}:{dialect.unit_line}, column {dialect.headings[place]}"
+            name = name.partition("=")[0]
             what = f'the unit row says "{found}", the plant file says "{tag.unit}" for tag {name}'
             faults.append(
                 Fault(where, what, f"correct exports.{tag.export}.tags.{name}.unit, or the column it binds")
@@ -247,7 +248,7 @@ def _unit_row(
 
 def _same(found: str, tag: Tag) -> bool | None:
     """Whether a unit text is that of the tag; None when nobody knows the text."""
-    if same_unit(found, tag.unit):
+    if any(same_unit(found, then.unit) for _, _, then in tag.stretches):
         return True
     unit, qualifier = split_qualifier(found)
     try:

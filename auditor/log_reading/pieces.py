@@ -58,6 +58,12 @@ class Piece:
         )
         return first, rest
 
+    def reject_instants(self) -> NDArray[np.int64]:
+        """Stamp of the row of each reject [us]; 0 where no line gave a row."""
+        if not self.line.size:
+            return np.zeros(self.rejects.line.shape, np.int64)
+        return self.instants_us[self._row_of_rejects()]
+
     def _row_of_rejects(self) -> NDArray[np.int64]:
         """Row of each reject: that of its line, or of the last line before it that gave a row."""
         if not (self.line.size and self.rejects.line.size):

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from auditor.log_reading.aliases import Folding, by_tag, with_joins
 from auditor.log_reading.file_reading import FileReader
 from auditor.log_reading.merge import ALWAYS, NEVER, Source, merge
 from auditor.log_reading.notes import unread_note, with_late_rows
 from auditor.log_reading.pieces import Piece
 from auditor.log_reading.recognition import RecognisedFile, Recognition
-from auditor.records.plant import Export
 from auditor.records.samples import ReadingNote, SampleBlock
 
 _SLACK_US = 3 * 3_600_000_000
@@ -42,20 +42,23 @@ def read_export(
     file whose rows are not in order.
     """
     export = recognition.exports[export_name]
+    folding = Folding(export, recognition.tags)
     sources = []
     for file in recognition.files[export_name]:
         if file.lies_outside(window_us):
             yield unread_note(file, export_name)
         else:
-            sources.append(_source(file, recognition, export, window_us))
-    yield from merge(sources, export, with_late_rows)
+            sources.append(_source(file, recognition, folding, window_us))
+    merged = merge(sources, by_tag(export), with_late_rows)
+    yield from with_joins(merged, folding) if folding.is_needed else merged
 
 
 def _source(
-    file: RecognisedFile, recognition: Recognition, export: Export, window_us: tuple[int, int]
+    file: RecognisedFile, recognition: Recognition, folding: Folding, window_us: tuple[int, int]
 ) -> Source:
     def read() -> Iterator[Piece | ReadingNote]:
-        return FileReader(file, export, recognition.tags, window_us).read()
+        pieces = FileReader(file, folding.export, recognition.tags, window_us).read()
+        return folding.fold(pieces) if folding.is_needed else pieces
 
     margin_us = 0 if file.is_whole else _SLACK_US
     slack_us = margin_us if file.is_ordered else NEVER

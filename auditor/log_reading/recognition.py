@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
+from auditor.log_reading.aliases import by_heading, tag_of, unread_tags
 from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key, unit_faults
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
@@ -71,6 +72,7 @@ class Recognition:
     logs: Path
     exports: Mapping[str, Export]
     tags: Mapping[str, Tag]
+    """With a tag of its own for every further heading, as :func:`~auditor.log_reading.aliases.by_heading`."""
     files: Mapping[str, tuple[RecognisedFile, ...]]
     """Per export, in order of precedence: by pattern, then by path."""
     unopened: tuple[UnopenedFile, ...]
@@ -107,6 +109,7 @@ def recognise(logs: Path, exports: Mapping[str, Export], tags: Mapping[str, Tag]
         or bound and doubled, a unit row that differs, a date order or decimal mark that the data
         contradict, an export whose stamps cannot be read.
     """
+    exports, tags = by_heading(exports, tags)
     listing = list_logs(logs, exports)
     faults: list[Fault] = []
     findings: list[Finding] = []
@@ -209,11 +212,7 @@ class _Pool:
         return tuple(self._file(look, believed_us) for look in looks)
 
     def _file(self, look: Look, believed_us: tuple[int, int]) -> RecognisedFile:
-        missing = (
-            []
-            if look.dialect.is_long
-            else [tag for tag in self.export.tags if tag not in look.dialect.columns]
-        )
+        missing = [] if look.dialect.is_long else unread_tags(self.export.tags, look.dialect.columns)
         evidence = [f"{look.encoding.shown}: {look.encoding.evidence}", *look.dialect.evidence]
         evidence += unit_faults(look.dialect, look.head, look.claim.stored.path, self.tags)[1]
         if look.dates_proven:
@@ -252,27 +251,26 @@ class _Pool:
             dict.fromkeys([name for look in self.looks for name in look.dialect.headings] + self.fields)
         )
         names, where = headings, f"exports.{export.name}"
-        wanted = [(f"exports.{export.name}.stamp_columns", name, 0) for name in export.stamp_columns]
+        wanted = [(f"plant.toml, {where}.stamp_columns", name) for name in export.stamp_columns]
         if export.layout is not None:
             keys = ("stamp", "tag", "value")
-            wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key), 0) for key in keys]
+            wanted = [(f"plant.toml, {where}.layout.{key}", getattr(export.layout, key)) for key in keys]
         else:
-            wanted += [
-                (f"{where}.tags.{name}.column", tag.column, tag.line) for name, tag in self.tags.items()
-            ]
+            wanted += [(_place_of(tag), tag.column) for _, tag in self._lost(headings)]
         faults = [
-            _no_heading((line, key), name, names, self)
-            for key, name, line in wanted
+            _no_heading(place, name, names, self)
+            for place, name in wanted
             if heading_key(name) not in headings
         ]
         if export.layout is not None and self.looks and all(look.is_whole for look in self.looks):
             points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
-            faults += [
-                _no_heading((tag.line, f"{where}.tags.{name}.column"), tag.column, points, self)
-                for name, tag in self.tags.items()
-                if heading_key(tag.column) not in points
-            ]
+            faults += [_no_heading(_place_of(tag), tag.column, points, self) for _, tag in self._lost(points)]
         return faults
+
+    def _lost(self, headings: Sequence[str]) -> list[tuple[str, Tag]]:
+        """Tags of which none of the headings was found, with the first one."""
+        found = {tag_of(name) for name, tag in self.tags.items() if heading_key(tag.column) in headings}
+        return [(name, tag) for name, tag in self.tags.items() if tag_of(name) == name and name not in found]
 
     def _contradictions(self) -> list[Fault]:
         faults = []
@@ -304,13 +302,21 @@ class _Pool:
         return faults
 
 
-def _no_heading(place: tuple[int, str], name: str, names: Sequence[str], pool: _Pool) -> Fault:
-    line, key = place
+def _place_of(tag: Tag) -> str:
+    """Where the column of a tag is declared."""
+    if not tag.line:
+        return f"{tag.declared_in}, exports.{tag.export}.tags.{tag.name}.column"
+    if tag.declared_in != "plant.toml":
+        return f"{tag.declared_in}:{tag.line}, column column"
+    return f"plant.toml:{tag.line}, exports.{tag.export}.tags.{tag.name}.column"
+
+
+def _no_heading(place: str, name: str, names: Sequence[str], pool: _Pool) -> Fault:
     near = difflib.get_close_matches(heading_key(name), list(names), 3, 0.5)
     files = len(pool.looks) + len(pool.unopened)
     nearest = "nearest: " + ", ".join(f'"{word}"' for word in near) if near else "there is none like it"
     return Fault(
-        f"plant.toml:{line}, {key}" if line else f"plant.toml, {key}",
+        place,
         f'"{name}" is in none of the {files} files of export {pool.export.name}; {nearest}',
         "write the name exactly as it stands in the export, or correct the export's files",
     )

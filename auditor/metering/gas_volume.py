@@ -50,9 +50,16 @@ def _ratio_to_state(meter: GasMeter, state: VolumeState, read: Reader) -> FloatA
 
 def _absolute_pressure_Pa(tag: str, read: Reader) -> FloatArray:
     pressure_Pa = read.value(tag)
-    if read.settings.tags[tag].pressure == "gauge":
-        return absolute_pressure_Pa(pressure_Pa, _air_pressure_Pa(read))
-    return np.where(pressure_Pa > 0.0, pressure_Pa, np.nan)
+    stretches = read.settings.tags[tag].stretches
+    absolute_Pa = np.where(pressure_Pa > 0.0, pressure_Pa, np.nan)
+    if all(then.pressure != "gauge" for _, _, then in stretches):
+        return absolute_Pa
+    against_air_Pa = absolute_pressure_Pa(pressure_Pa, _air_pressure_Pa(read))
+    for start_us, end_us, then in stretches:
+        if then.pressure != "gauge":
+            ticks = (read.start_us >= start_us) & (read.start_us < end_us)
+            against_air_Pa = np.where(ticks, absolute_Pa, against_air_Pa)
+    return against_air_Pa
 
 
 def _air_pressure_Pa(read: Reader) -> FloatArray | float:

@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from auditor.metering.calibrations import moved_calibration
 from auditor.metering.shifts import calibration_shift, random_shift
 from auditor.physics.arrays import FloatArray
 
@@ -45,8 +46,8 @@ class Inputs:
 
     def moved_column(self, column: str) -> bool:
         """Whether the tag of a column is the one that is moved."""
-        tag = self.ticks.tags[self.ticks.column(column)]
-        return self.moves("calibration", tag) or self.moves("random", tag)
+        tag = self.settings.tags[self.ticks.tags[self.ticks.column(column)]]
+        return moved_calibration(tag, self.move) is not None or self.moves("random", tag.name)
 
     def mean(self, column: str) -> FloatArray:
         """Tick means of a column [SI], shape (T,), with the move."""
@@ -55,13 +56,15 @@ class Inputs:
         tag = self.settings.tags[self.ticks.tags[index]]
         if self.move is None:
             return mean
-        if self.moves("calibration", tag.name):
-            shift = calibration_shift(mean, tag)
+        moved = moved_calibration(tag, self.move)
+        if moved is not None:
+            holds = moved.holds(self.ticks.grid.start_us)
+            shift = np.where(holds, calibration_shift(mean, moved.tag), 0.0)
         elif self.moves("random", tag.name):
             shift = random_shift(self.ticks, column)
         else:
             return mean
-        if tag.cut_off is not None:
+        if any(then.cut_off is not None for _, _, then in tag.stretches):
             # Below its cut-off a value is zero by declaration: which side it lies on is not moved.
             shift = np.where(mean == 0.0, 0.0, shift)
         return mean + self.move.direction * shift

@@ -7,12 +7,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from auditor.records.powers import Source, SourceKind
+from auditor.metering.calibrations import Calibration, calibrations_of
+from auditor.records.powers import Source
 
 if TYPE_CHECKING:
     from auditor.metering.metered import Metered
     from auditor.metering.settings import MeteringSettings
-    from auditor.records.plant import Tag
     from auditor.records.ticks import TickTable
 
 
@@ -28,8 +28,7 @@ def sources_of(metered: Metered, ticks: TickTable, settings: MeteringSettings) -
         tag = settings.tags[ticks.tags[index]]
         if tag.states is not None:
             continue
-        if _has_calibration(tag):
-            keys.add(f"calibration:{tag.name}")
+        keys |= {each.key for each in calibrations_of(tag) if _touches(each, ticks)}
         if np.nanmax(ticks.noise[:, index], initial=0.0) > 0.0:
             keys.add(f"random:{tag.name}")
     return frozenset(keys)
@@ -45,16 +44,16 @@ def ordered_sources(
     return tuple(source for source in _all(metered, settings) if source.key in used)
 
 
-def _has_calibration(tag: Tag) -> bool:
-    declared = tag.calibration
-    return declared is not None and (declared.absolute > 0.0 or declared.relative > 0.0)
+def _touches(calibration: Calibration, ticks: TickTable) -> bool:
+    declared = calibration.tag.calibration
+    is_uncertain = declared is not None and (declared.absolute > 0.0 or declared.relative > 0.0)
+    return is_uncertain and bool(calibration.holds(ticks.grid.start_us).any())
 
 
 def _all(metered: Mapping[str, Metered], settings: MeteringSettings) -> Iterator[Source]:
-    kinds: tuple[SourceKind, ...] = ("calibration", "random")
-    for tag in settings.tags:
-        for kind in kinds:
-            yield Source(f"{kind}:{tag}", kind, tag)
+    for name, tag in settings.tags.items():
+        yield from (Source(each.key, "calibration", name) for each in calibrations_of(tag))
+        yield Source(f"random:{name}", "random", name)
     names = dict.fromkeys(assumed.key for stream in metered.values() for assumed in stream.assumed)
     for name in names:
         yield Source(f"assumed:{name}", "assumed", name)

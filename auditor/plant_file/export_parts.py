@@ -6,6 +6,11 @@ from collections.abc import Mapping
 from types import MappingProxyType
 from typing import Annotated, Any, ClassVar, Literal
 
+from pydantic import GetJsonSchemaHandler
+from pydantic.json_schema import JsonSchemaValue
+from pydantic_core import CoreSchema
+
+from auditor.plant_file.aliases import ColumnHeadings
 from auditor.plant_file.leaves import (
     Clock,
     Duration,
@@ -15,13 +20,27 @@ from auditor.plant_file.leaves import (
     OwnUnitValue,
     Spread,
     StampColumns,
+    TagListFile,
     UnitText,
 )
 from auditor.plant_file.parts import Choice, Part, keys_of, optional, required
+from auditor.plant_file.tag_changes import (
+    CounterTagChange,
+    InstantTagChange,
+    MeanTagChange,
+    NumberTagChange,
+)
 
 _BETWEEN = "what the value means between two stamps: step, line, mean, amount, counter or state"
 _HOLD = "longest time between two samples that is still covered"
 _FULL_STRETCH = "longest stretch that one stamp can stand for"
+_COLUMN = (
+    "heading of the column; in a long export its name in the tag column; a list where it was renamed, "
+    "with from and until where the dates matter"
+)
+_CHANGES = "what is different about the tag from a date on: unit, range, uncertainty..."
+_KELVINS = [{"from": "2026-07-20", "unit": "K"}, {"from": "2026-07-21", "unit": "degC"}]
+_EXCHANGE = [{"from": "2026-07-10T08:00:00", "standard": "0.5 %"}]
 _UNCERTAINTY = 'a bare number is in the tag\'s own unit, "2 %" is of the reading, "2 % of 1200 kW" of a span'
 
 
@@ -30,7 +49,7 @@ class NumberTag(Part):
 
     either: ClassVar[tuple[tuple[str, str], ...]] = (("standard", "limit"),)
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    column: ColumnHeadings = required(_COLUMN, "OR-G")
     unit: UnitText = required("unit of the logged number", "kW")
     standard: Spread | None = optional(f"one standard uncertainty; {_UNCERTAINTY}", "0.5 %")
     limit: Spread | None = optional(
@@ -101,6 +120,7 @@ class StepTag(InstantTag):
     between: Literal["step"] = required(_BETWEEN, "step")
     hold: Duration = required(_HOLD, "60 min")
     deadband: OwnUnitValue | None = optional("change that it takes before a new value is stored", "5 K")
+    changes: list[InstantTagChange] | None = optional(_CHANGES, _KELVINS)
 
 
 class LineTag(InstantTag):
@@ -109,6 +129,7 @@ class LineTag(InstantTag):
     between: Literal["line"] = required(_BETWEEN, "line")
     hold: Duration = required(_HOLD, "5 min")
     deadband: OwnUnitValue | None = optional("change that it takes before a new value is stored", "0.5 K")
+    changes: list[InstantTagChange] | None = optional(_CHANGES, _KELVINS)
 
 
 class MeanTag(InstantTag):
@@ -117,6 +138,7 @@ class MeanTag(InstantTag):
     between: Literal["mean"] = required(_BETWEEN, "mean")
     stamp_marks: Literal["start", "end"] = required("which end of its stretch the stamp marks", "end")
     hold: Duration = optional(_FULL_STRETCH, "15 min", default="1 h")
+    changes: list[MeanTagChange] | None = optional(_CHANGES, _KELVINS)
 
 
 class AmountTag(PlainTag):
@@ -125,6 +147,7 @@ class AmountTag(PlainTag):
     between: Literal["amount"] = required(_BETWEEN, "amount")
     stamp_marks: Literal["start", "end"] = required("which end of its stretch the stamp marks", "end")
     hold: Duration = optional(_FULL_STRETCH, "15 min", default="1 h")
+    changes: list[NumberTagChange] | None = optional(_CHANGES, _EXCHANGE)
 
 
 class CounterTag(NumberTag):
@@ -139,12 +162,13 @@ class CounterTag(NumberTag):
         "number of units after which the counter begins again at zero: of seven digits, 10000000",
         "10000000 kWh",
     )
+    changes: list[CounterTagChange] | None = optional(_CHANGES, _EXCHANGE)
 
 
 class StateTag(Part):
     """The cell holds a state: a breaker, a mode."""
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "BKR")
+    column: ColumnHeadings = required(_COLUMN, "BKR")
     between: Literal["state"] = required(_BETWEEN, "state")
     hold: Duration = required(_HOLD, "5 min")
     states: dict[str, OneLine] = required(
@@ -172,7 +196,7 @@ class UndecidedTag(Part):
         key for form in _TAG_FORMS.values() for key in keys_of(form)
     )
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    column: ColumnHeadings = required(_COLUMN, "OR-G")
     between: Literal["step", "line", "mean", "amount", "counter", "state"] = required(_BETWEEN, "line")
 
 
@@ -191,6 +215,17 @@ class LongLayoutPart(Part):
 
 class ExportPart(Part):
     """One kind of export file."""
+
+    @classmethod
+    def __get_pydantic_json_schema__(
+        cls, core_schema: CoreSchema, handler: GetJsonSchemaHandler, /
+    ) -> JsonSchemaValue:
+        """Let a tag list stand in the place of the tags."""
+        schema = super().__get_pydantic_json_schema__(core_schema, handler)
+        body = handler.resolve_ref_schema(schema)
+        body["required"] = [key for key in body["required"] if key != "tags"]
+        body["anyOf"] = [{"required": ["tags"]}, {"required": ["tag_list"]}]
+        return schema
 
     files: FilePatterns = required(
         "patterns below logs/; where two of them hold the same stamp, the earlier one wins", ["power/*.csv"]
@@ -221,6 +256,9 @@ class ExportPart(Part):
     )
     when_stamps_repeat: Literal["keep first", "keep later", "reject both"] = optional(
         "which of several different values of one stamp is kept", "keep later", default="reject both"
+    )
+    tag_list: TagListFile | None = optional(
+        "CSV file beside the plant file with one row per tag, the keys of a tag as columns", "tags.csv"
     )
     tags: dict[str, Annotated[AnyTag, Choice(tag_form)]] = required(
         "the tags read from this export, by the names used in this file",

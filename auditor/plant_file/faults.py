@@ -18,6 +18,10 @@ _MOST_CHOICES = 12
 """So many valid words are listed; a fault should fit a screen."""
 
 
+_COLUMNS = {"range": "low and high"}
+"""Keys that are written otherwise in a row of a table."""
+
+
 class UnusableError(ValueError):
     """A value that cannot be used: what was found, and what to write instead."""
 
@@ -33,14 +37,36 @@ class FaultBook:
     def __init__(self, file_name: str, lines: KeyLines) -> None:
         self._file_name = file_name
         self._lines = lines
-        self._faults: list[tuple[int, KeyPath, Fault]] = []
+        self._faults: list[tuple[tuple[str, int], KeyPath, Fault]] = []
+        self._elsewhere: dict[KeyPath, tuple[str, int]] = {}
+
+    def comes_from(self, path: KeyPath, file: str, line: int) -> None:
+        """Note that a table was read from a row of another file."""
+        self._elsewhere[path] = (file, line)
 
     def add(self, path: KeyPath, found: str, fix: str) -> None:
         """Note one fault at a key."""
+        row, inside = self._row(path)
+        if row is not None:
+            column = "" if not inside else f", column {_COLUMNS.get(str(inside[0]), inside[0])}"
+            fault = Fault(f"{row[0]}:{row[1]}{column}", found, fix)
+            self._faults.append((row, path, fault))
+            return
         line = self._lines.of(path)
         name = key_text(path)
         where = f"{self._file_name}:{line}, {name}" if name else f"{self._file_name}:{line}"
-        self._faults.append((line, path, Fault(where, found, fix)))
+        self._faults.append((("", line), path, Fault(where, found, fix)))
+
+    def add_at(self, row: tuple[str, int], fault: Fault) -> None:
+        """Note one fault of another file, which keeps the whole plant from being read."""
+        self._faults.append((row, (), fault))
+
+    def _row(self, path: KeyPath) -> tuple[tuple[str, int] | None, KeyPath]:
+        """File and line of the row that a key was read from, and the key's path in it."""
+        for end in range(len(path), 0, -1):
+            if path[:end] in self._elsewhere:
+                return self._elsewhere[path[:end]], path[end:]
+        return None, path
 
     def attempt(
         self,
@@ -62,10 +88,16 @@ class FaultBook:
 
     def line(self, path: KeyPath) -> int:
         """Line of a key."""
-        return self._lines.of(path)
+        row, _ = self._row(path)
+        return self._lines.of(path) if row is None else row[1]
+
+    def file(self, path: KeyPath) -> str:
+        """File that a key stands in."""
+        row, _ = self._row(path)
+        return self._file_name if row is None else row[0]
 
     def close(self) -> None:
-        """Raise every fault noted, in the order of the lines.
+        """Raise every fault noted: first the plant file, then lists beside it, in the order of the lines.
 
         Raises
         ------

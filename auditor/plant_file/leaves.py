@@ -108,6 +108,17 @@ def file_patterns(value: object) -> tuple[str, ...]:
     return patterns
 
 
+def tag_list_file(text: object) -> str:
+    """Accept the name of a CSV file in the site folder."""
+    name = file_pattern(text)
+    if re.search(r"[*?\[\]]", name) or not name.lower().endswith(".csv"):
+        raise UnusableError(
+            f"{shown(name)} is no CSV file of the site folder",
+            'write its name, such as tag_list = "tags.csv"',
+        )
+    return name
+
+
 def stamp_columns(value: object) -> tuple[str, ...]:
     """Accept one heading, or two where date and time stand apart."""
     columns = tuple(one_line(item) for item in (value if isinstance(value, list) else [value]))
@@ -254,6 +265,7 @@ def measured(quantity: str, example: str, *, positive: bool = True) -> Leaf:
 OneLine: TypeAlias = Annotated[str, Leaf(one_line, _TEXT_SCHEMA)]
 Words: TypeAlias = Annotated[str, Leaf(words, _TEXT_SCHEMA)]
 FilePatterns: TypeAlias = Annotated[tuple[str, ...], Leaf(file_patterns, _TEXTS_SCHEMA)]
+TagListFile: TypeAlias = Annotated[str, Leaf(tag_list_file, _TEXT_SCHEMA)]
 StampColumns: TypeAlias = Annotated[tuple[str, ...], Leaf(stamp_columns, _TEXT_OR_TEXTS)]
 NameOrNames: TypeAlias = Annotated[tuple[str, ...], Leaf(name_or_names, _TEXT_OR_TEXTS)]
 Zone: TypeAlias = Annotated[str, Leaf(zone, _TEXT_SCHEMA)]

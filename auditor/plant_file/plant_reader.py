@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 import tomllib
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -26,6 +27,7 @@ from auditor.plant_file.resolve_site import (
 )
 from auditor.plant_file.resolve_tags import resolve_tags
 from auditor.plant_file.site_parts import PlantPart
+from auditor.plant_file.tag_list import insert_tag_lists
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.machines import FlowAndTemperatures
 from auditor.records.plant import Plant
@@ -58,7 +60,8 @@ def read_plant(site: Path) -> Plant:
     text = _text(path)
     raw = _toml(path.name, text)
     book = FaultBook(path.name, KeyLines(text))
-    return _resolve(read_part(PlantPart, raw, (), book), path, text, book)
+    lists = insert_tag_lists(raw, path.parent, book)
+    return replace(_resolve(read_part(PlantPart, raw, (), book), path, text, book), tag_lists=lists)
 
 
 def _text(path: Path) -> str:
@@ -118,7 +121,7 @@ def _resolve(part: PlantPart, path: Path, text: str, book: FaultBook) -> Plant:
     zone = None if part.site is None else part.site.zone
     export_parts = part.exports or {}
     site, rules = resolve_site(part.site, book), resolve_rules(part.rules, book)
-    tags = resolve_tags(export_parts, book)
+    tags = resolve_tags(export_parts, zone, book)
     exports = {name: resolve_export(name, export, book) for name, export in export_parts.items()}
     check_patterns(export_parts, book)
     check_barometer(part.site, tags, book)

@@ -44,7 +44,7 @@ def _check_meter(meter: GasMeter, place: Place) -> None:
     site = place.declared.site
     if (
         pressure is not None
-        and pressure.pressure == "gauge"
+        and any(then.pressure == "gauge" for _, _, then in pressure.stretches)
         and site is not None
         and site.air_pressure is None
     ):

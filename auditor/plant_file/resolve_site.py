@@ -123,7 +123,8 @@ def check_barometer(part: SitePart | None, tags: Mapping[str, Tag | None], book:
         book.add(path, f'there is no tag "{name}"', choices(name, tags))
         return
     tag = tags[name]
-    if tag is not None and (tag.quantity != "pressure" or tag.pressure == "gauge"):
+    against_air = tag is not None and any(then.pressure == "gauge" for _, _, then in tag.stretches)
+    if tag is not None and (tag.quantity != "pressure" or against_air):
         book.add(
             path,
             f'tag "{name}" is no absolute pressure',

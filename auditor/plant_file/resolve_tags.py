@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 
+from auditor.plant_file.aliases import resolve_headings
 from auditor.plant_file.export_parts import (
     AmountTag,
     AnyTag,
@@ -30,17 +32,23 @@ from auditor.plant_file.quantities import (
     unit_conversion,
 )
 from auditor.plant_file.references import find, tick_quantity
+from auditor.plant_file.tag_changes import resolve_changes
 from auditor.plant_file.value_tests import value_tests
 from auditor.plant_file.written import shown
-from auditor.records.plant import Tag
+from auditor.records.plant import Tag, TagChange
 from auditor.records.uncertain import Uncertainty
 
 REFERENCE = "reference"
 """Stands for the reference temperature in a flue-gas stream, so no tag may have this name."""
 
 
-def resolve_tags(exports: Mapping[str, ExportPart], book: FaultBook) -> dict[str, Tag | None]:
-    """Make the records of all tags; one at fault stands with None, so that it still counts as declared."""
+def resolve_tags(
+    exports: Mapping[str, ExportPart], zone: str | None, book: FaultBook
+) -> dict[str, Tag | None]:
+    """Make the records of all tags; one at fault stands with None, so that it still counts as declared.
+
+    ``zone`` is the site's: dates without an offset are of its clock.
+    """
     tags: dict[str, Tag | None] = {}
     homes: dict[str, str] = {}
     for export, export_part in exports.items():
@@ -50,7 +58,7 @@ def resolve_tags(exports: Mapping[str, ExportPart], book: FaultBook) -> dict[str
             _check_name(name, path, homes, book)
             _check_column(name, part, columns, (path, book))
             homes.setdefault(name, export)
-            tags.setdefault(name, _resolve_tag(name, part, path, book))
+            tags.setdefault(name, _dated_tag(name, part, zone, path, book))
     for tag in tags.values():
         if tag is not None and tag.same_quantity_as is not None:
             _check_second_meter(tag, tags, book)
@@ -69,6 +77,18 @@ def _check_second_meter(tag: Tag, tags: Mapping[str, Tag | None], book: FaultBoo
             f"that this tag measures",
             "name a tag of the same quantity (a counter goes with its rate), or correct the unit",
         )
+
+
+def _dated_tag(name: str, part: AnyTag, zone: str | None, path: KeyPath, book: FaultBook) -> Tag | None:
+    """Make the record of a tag with everything that has dates."""
+    tag = _resolve_tag(name, part, path, book)
+    if tag is None:
+        return None
+    headings = resolve_headings(part.column or (), zone, path, book)
+    changes: tuple[TagChange, ...] = ()
+    if isinstance(part, NumberTag):
+        changes = resolve_changes(tag, part, zone, (path, book), _resolve_tag)
+    return replace(tag, headings=headings, changes=changes) if book.clean(path) else None
 
 
 def _check_name(name: str, path: KeyPath, homes: Mapping[str, str], book: FaultBook) -> None:
@@ -90,16 +110,18 @@ def _check_column(
     path, book = noting
     if part.column is None:
         return
-    if part.column in columns:
-        book.add(
-            (*path, "column"),
-            f'the column "{part.column}" is bound to the tag "{columns[part.column]}" already',
-            "bind each column once; two streams may point at the same tag",
-        )
-    columns.setdefault(part.column, name)
+    for heading in part.column:
+        if heading.name in columns:
+            book.add(
+                (*path, "column"),
+                f'the column "{heading.name}" is bound to the tag "{columns[heading.name]}" already',
+                "bind each column once; two streams may point at the same tag",
+            )
+        columns.setdefault(heading.name, name)
 
 
 def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag | None:
+    """Make the record, to be used where nothing below its path is at fault."""
     if isinstance(part, StateTag):
         return _state(name, part, path, book)
     if isinstance(part, UndecidedTag) or part.unit is None:
@@ -108,10 +130,10 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
     _check_quantity(part, own.quantity, path, book)
     reader = _OwnUnit(part, own.quantity, path, book)
     calibration = reader.calibration()
-    tag = Tag(
+    return Tag(
         name=name,
         export=str(path[1]),
-        column=part.column,
+        column=part.column[0].name if part.column else "",
         unit=part.unit,
         quantity=own.quantity,
         scale=own.scale,
@@ -136,8 +158,8 @@ def _resolve_tag(name: str, part: AnyTag, path: KeyPath, book: FaultBook) -> Tag
         basis=part.basis if isinstance(part, InstantTag) else None,
         same_quantity_as=part.same_quantity_as,
         line=book.line(path),
+        declared_in=book.file(path),
     )
-    return tag if book.clean(path) else None
 
 
 def _state(name: str, part: StateTag, path: KeyPath, book: FaultBook) -> Tag | None:
@@ -152,7 +174,7 @@ def _state(name: str, part: StateTag, path: KeyPath, book: FaultBook) -> Tag | N
     return Tag(
         name=name,
         export=str(path[1]),
-        column=part.column,
+        column=part.column[0].name,
         unit="",
         quantity="dimensionless",
         scale=1.0,
@@ -164,6 +186,7 @@ def _state(name: str, part: StateTag, path: KeyPath, book: FaultBook) -> Tag | N
         calibration=None,
         states=dict(part.states),
         line=book.line(path),
+        declared_in=book.file(path),
     )
 
 

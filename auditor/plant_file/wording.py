@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from datetime import date
 from typing import Any, Literal, get_args, get_origin
 
 from pydantic.fields import FieldInfo
@@ -40,8 +41,10 @@ def complaint(detail: ErrorDetails, example: str, field: FieldInfo) -> tuple[str
 
 
 def assignment(key: str, field: FieldInfo) -> str:
-    """Write a line that could be pasted: ``hold = "5 min"``."""
-    return f"{key} = {toml_text((field.examples or [''])[0])}"
+    """Write a line that could be pasted: ``hold = "5 min"``, and a date without quotes."""
+    example = (field.examples or [""])[0]
+    is_date = date in get_args(form_of(field.annotation)[0])
+    return f"{key} = {example if is_date else toml_text(example)}"
 
 
 def addition(key: str, field: FieldInfo) -> str:

@@ -23,6 +23,7 @@ class FindingCode(StrEnum):
     REPEATED_HOUR = "repeated hour"
     UNCLAIMED_FILE = "unclaimed file"
     UNCLAIMED_COLUMN = "unclaimed column"
+    RENAMED_COLUMN = "renamed column"
     UNREADABLE_FILE = "unreadable file"
     INCOMPLETE_LINE = "incomplete line"
     REJECTED_LINES = "rejected lines"

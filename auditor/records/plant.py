@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from auditor.records.uncertain import Assumed, Uncertainty
 
 Between = Literal["step", "line", "mean", "amount", "counter", "state"]
+_EVER_US = (-(2**62), 2**62)
 DateOrder = Literal["year first", "day first", "month first", "epoch seconds", "epoch milliseconds"]
 
 
@@ -113,6 +114,29 @@ class ChangeRule:
 
 
 @dataclass(frozen=True)
+class Heading:
+    """One heading that a tag's column goes by, half-open in time where it has dates."""
+
+    name: str
+    from_us: int | None = None
+    until_us: int | None = None
+
+
+@dataclass(frozen=True)
+class TagChange:
+    """A tag as it is from one instant until its next change."""
+
+    from_us: int
+    since: str
+    """The instant as the plant file writes it."""
+    tag: Tag
+    """Everything that holds from then on; its own headings and changes are empty."""
+    new_calibration: bool
+    """Its uncertainty was declared anew: another instrument, whose error has nothing to do with the one
+    before."""
+
+
+@dataclass(frozen=True)
 class Tag:
     """One logged signal. Raw numbers become SI by ``scale * raw + offset``; limits below are SI already.
 
@@ -165,6 +189,19 @@ class Tag:
     """Another tag that measures the same thing; the two are compared, and nothing else comes of it."""
     line: int = 0
     """Line of the plant file, for messages."""
+    declared_in: str = "plant.toml"
+    """The plant file, or the tag list that holds its row."""
+    headings: tuple[Heading, ...] = ()
+    """Every heading of its column, in the order of the plant file; empty: ``column`` alone, always."""
+    changes: tuple[TagChange, ...] = ()
+    """What is different from a date on, in order of time."""
+
+    @property
+    def stretches(self) -> tuple[tuple[int, int, Tag], ...]:
+        """Half-open stretches [us] with the tag as it is in each, from ever to ever."""
+        starts = (_EVER_US[0], *(change.from_us for change in self.changes))
+        ends = (*starts[1:], _EVER_US[1])
+        return tuple(zip(starts, ends, (self, *(change.tag for change in self.changes)), strict=True))
 
     @property
     def stands_by_design(self) -> bool:
@@ -303,3 +340,10 @@ class Plant:
     machines: Mapping[str, Machine]
     """In the order of the plant file."""
     distrust: tuple[Distrust, ...]
+    tag_lists: tuple[tuple[str, str], ...] = ()
+    """Tag lists beside the plant file, each with its name and its text as read."""
+
+    @property
+    def whole_text(self) -> str:
+        """The plant file with its tag lists behind it: what its digest is taken of."""
+        return self.text + "".join(f"\n# {name}\n{text}" for name, text in self.tag_lists)

@@ -20,7 +20,8 @@ class Source:
     """One source of uncertainty: a tag's calibration part, its random part, or an assumed number."""
 
     key: str
-    """``calibration:TAG``, ``random:TAG`` or ``assumed:PLANT.FILE.KEY``."""
+    """``calibration:TAG``, ``random:TAG`` or ``assumed:PLANT.FILE.KEY``; another instrument under the same
+    tag has a calibration of its own, ``calibration:TAG@2026-07-10``."""
     kind: SourceKind
     name: str
     """The tag, or the key in the plant file."""

@@ -54,7 +54,7 @@ def render_report(result: AuditResult) -> str:
             method=_method(result),
             worked=worked_interval(result),
             cautions=CAUTIONS,
-            plant_text=result.plant.text,
+            plant_text=result.plant.whole_text,
             plant_sha256=result.plant_sha256,
             input_sha256=inputs.input_digest(result.notes),
             version=result.version,

@@ -97,12 +97,22 @@ def _note_lines(note: ReadingNote, zone: str) -> list[str]:
 
 def _tag_line(tag: Tag) -> str:
     unit = tag.unit or "state"
-    parts = [f'tag {tag.name}: column "{tag.column}", {unit}, {tag.between}']
+    columns = ", ".join(f'"{heading.name}"' for heading in tag.headings) or f'"{tag.column}"'
+    parts = [f"tag {tag.name}: column {columns}, {unit}, {tag.between}"]
     if tag.stamp_marks:
         parts.append(f"stamp marks the {tag.stamp_marks}")
     parts.append(f"held {tag.hold_s / 60.0:g} min")
     if tag.calibration is not None:
         parts.append(f"uncertainty {tag.calibration.declared}")
+    parts += [
+        f"from {change.since} on {change.tag.unit}"
+        + (
+            f" and uncertainty {change.tag.calibration.declared}"
+            if change.new_calibration and change.tag.calibration is not None
+            else ""
+        )
+        for change in tag.changes
+    ]
     return ", ".join(parts)
 
 

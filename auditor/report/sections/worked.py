@@ -114,9 +114,10 @@ def _readings(machine: Machine, inside: slice, result: AuditResult) -> Table:
         mean = result.ticks.mean[inside, place]
         known = np.isfinite(mean)
         value = float(mean[known].mean()) if known.any() else float("nan")
-        U = _reading_U(column, value, result.ticks.noise[inside, place][known], result)
+        tag = _calibrated(_column_tag(column, result), int(result.ticks.grid.start_us[inside][0]))
+        lag1 = float(np.nan_to_num(result.ticks.noise_lag1[place]))
+        U = _reading_U(tag, value, result.ticks.noise[inside, place][known], lag1)
         size = numbers.shown(value, U, unit)
-        tag = _column_tag(column, result)
         declared = tag.calibration.declared if tag is not None and tag.calibration is not None else "state"
         rows.append(
             (
@@ -137,14 +138,20 @@ def _readings(machine: Machine, inside: slice, result: AuditResult) -> Table:
     )
 
 
+def _calibrated(tag: Tag | None, instant_us: int) -> Tag | None:
+    """Return a tag as it was when the calibration that holds at an instant was declared."""
+    for change in tag.changes if tag is not None else ():
+        if change.new_calibration and change.from_us <= instant_us:
+            tag = change.tag
+    return tag
+
+
 def _reading_U(
-    column: str, value: float, noise: np.ndarray[tuple[int], np.dtype[np.float64]], result: AuditResult
+    tag: Tag | None, value: float, noise: np.ndarray[tuple[int], np.dtype[np.float64]], lag1: float
 ) -> float:
     """Return the expanded uncertainty of the interval mean of one tag [SI]."""
-    tag = _column_tag(column, result)
     if tag is None or tag.calibration is None or not noise.size:
         return float("nan")
-    lag1 = float(np.nan_to_num(result.ticks.noise_lag1[result.ticks.column(column)]))
     stretch = (1.0 + lag1) / max(1.0 - lag1, 0.05)
     random = float(np.nansum(noise**2)) / noise.size**2 * stretch
     fixed = tag.calibration.absolute**2 + (tag.calibration.relative * (value - tag.offset)) ** 2

@@ -9,7 +9,7 @@ from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Plant
 from auditor.report.numbers import count, duration, file_size
 from auditor.report.wording import names
-from auditor.report.wording.data_findings import Text, many, place, when
+from auditor.report.wording.data_findings import Text, many, place, subject, value, when
 
 
 def _export(finding: Finding) -> str:
@@ -155,6 +155,22 @@ def _unclaimed_column(finding: Finding, plant: Plant) -> Text:
     )
 
 
+def _renamed_column(finding: Finding, plant: Plant) -> Text:
+    old, new = finding.words.get("old", ""), finding.words.get("new", "")
+    before, after = (finding.numbers.get(name, math.nan) for name in ("before", "after"))
+    declared = plant.tags.get(finding.tag or "")
+    known = declared is not None and math.isfinite(before) and math.isfinite(after)
+    step = value(finding, plant, after - before + (declared.offset if known and declared else 0.0))
+    said = f": {value(finding, plant, before)} before, {value(finding, plant, after)} after" if known else ""
+    return (
+        f"{subject(finding, plant)} goes on under another heading",
+        f"“{old}” ends and “{new}” begins {when(finding, plant)}{said}"
+        + (f", a step of {step} over {duration(finding.numbers['gap_s'])}." if known else "."),
+        "If the step is larger than the process explains, ask what was exchanged that day, and declare the "
+        "new instrument as a change of the tag.",
+    )
+
+
 def _unreadable_file(finding: Finding, plant: Plant) -> Text:
     reason = finding.words.get("reason", "")
     return (
@@ -199,6 +215,7 @@ WRITERS: dict[FindingCode, Callable[[Finding, Plant], Text]] = {
     FindingCode.REPEATED_HOUR: _repeated_hour,
     FindingCode.UNCLAIMED_FILE: _unclaimed_file,
     FindingCode.UNCLAIMED_COLUMN: _unclaimed_column,
+    FindingCode.RENAMED_COLUMN: _renamed_column,
     FindingCode.UNREADABLE_FILE: _unreadable_file,
     FindingCode.INCOMPLETE_LINE: _incomplete_line,
     FindingCode.REJECTED_LINES: _rejected_lines,

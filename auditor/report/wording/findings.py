@@ -33,6 +33,7 @@ _TAKE_NOTE_ONLY = frozenset(
         FindingCode.DISTRUSTED,
         FindingCode.HEATING_VALUE_CHANGED,
         FindingCode.INCOMPLETE_LINE,
+        FindingCode.RENAMED_COLUMN,
         FindingCode.UNCLAIMED_COLUMN,
         FindingCode.UNCLAIMED_FILE,
     }

@@ -81,8 +81,12 @@ def source(plant: Plant, origin: Source) -> str:
         return f"assumed number {origin.name}"
     declared = plant.tags.get(origin.name)
     if origin.kind == "calibration":
+        since = origin.key.removeprefix(f"calibration:{origin.name}").removeprefix("@")
+        for change in declared.changes if declared and since else ():
+            declared = change.tag if change.since == since else declared
         words = declared.calibration.declared if declared and declared.calibration else ""
-        return f"calibration of {tag(plant, origin.name)}" + (f": {words}" if words else "")
+        known = f"calibration of {tag(plant, origin.name)}" + (f" from {since} on" if since else "")
+        return known + (f": {words}" if words else "")
     if declared is not None and declared.random is not None:
         return f"scatter of {tag(plant, origin.name)}: {declared.random.declared}"
     return f"scatter of {tag(plant, origin.name)}, estimated from its own readings"
