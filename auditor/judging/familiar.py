@@ -41,7 +41,7 @@ def _exact(cause: str, ratio: float) -> Familiar:
 
 _REFERENCE_STATES = (
     # ISO 13443:1996: standard reference conditions of natural gas are 288.15 K and 101.325 kPa. Normal state
-    # of DIN 1343: 273.15 K, 101.325 kPa. ISO 2533 (from memory) and many blowers: 293.15 K.
+    # of DIN 1343: 273.15 K, 101.325 kPa. Volumes at 293.15 K: common practice, no source.
     _exact("normal or 15 degC", 288.15 / _ICE_POINT_K),
     _exact("normal or 20 degC", 293.15 / _ICE_POINT_K),
 )
