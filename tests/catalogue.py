@@ -53,7 +53,7 @@ class Case:
     totals: Mapping[str, float] = field(default_factory=dict)
     """By tag: integral over the period, value times seconds (a counter: what it counted)."""
     found: Sequence[FindingCode] = ()
-    """Codes of all findings; gaps are left out unless one is listed (the exports are far shorter than a day)."""
+    """Codes of all findings; gaps are left out unless one is listed: the exports are shorter than a day."""
     said: Sequence[str] = ()
     """Each stands in the evidence, in the words of a finding, or in the refusal."""
     refused: bool = False
@@ -145,6 +145,14 @@ def _all_cells_are_accounted_for(got: Outcome, tag: str) -> None:
         row = block.tags.index(tag)
         cells += int(block.rejected[row].sum()) + int(np.isfinite(block.values[row]).sum())
     assert sum(got.cells(tag).values()) == cells, tag
+
+
+def minutes(head: str, *cells: object) -> str:
+    """A file with a line each minute: its stamp, its cell, and its number from 0 in a second column."""
+    more = ";{}" if head.count(";") > 1 else ""
+    return f"{head}\n" + "".join(
+        f"2026-07-01 {at // 60:02}:{at % 60:02};{cell}{more.format(at)}\n" for at, cell in enumerate(cells)
+    )
 
 
 def every(cases: Sequence[Case]) -> pytest.MarkDecorator:

@@ -1,6 +1,6 @@
 """Awkward exports by number, 1 to 16: shape and text of the files, and cells that are no plain numbers.
 
-What arrives is common practice of loggers and spreadsheets, no source; every expected value is worked by hand.
+What arrives is common practice of loggers and spreadsheets, no source; expected values are worked by hand.
 """
 
 from __future__ import annotations
@@ -10,7 +10,7 @@ import io
 import zipfile
 from pathlib import Path
 
-from catalogue import Case, every, hold
+from catalogue import Case, every, hold, minutes
 
 from auditor.records.findings import FindingCode
 from auditor.records.plant import LongLayout
@@ -26,6 +26,8 @@ LONG = {"layout": LongLayout("t", "p", "v")}
 LONG_ROWS = "".join(
     f"2026-07-01 00:0{at},{name},{1 + 2 * at + place}\n" for at in range(3) for place, name in enumerate("ab")
 )
+REMARK = '2026-07-01 00:00;"late; ""again""";1;2\n'
+BROKEN_REMARK = '2026-07-01 00:01;3;4;"stopped\nby hand"\n'
 WARM = {"a": "Wärme °C", "b": "b"}
 WARM_TEXT = PLAIN.replace("t;a;", "t;Wärme °C;")
 
@@ -64,7 +66,15 @@ TABLES = [
     Case(
         5,
         "preamble, heading and unit row, blank rows",
-        {"1.csv": "Logger 7; serial 4711\nbegin;2026-07-01\n\n" + HEAD + ";[kW];(°C)\n\n" + ONE + "\n" + TWO + THREE},
+        {
+            "1.csv": "Logger 7; serial 4711\nbegin;2026-07-01\n\n"
+            + HEAD
+            + ";[kW];(°C)\n\n"
+            + ONE
+            + "\n"
+            + TWO
+            + THREE
+        },
         export={"units": {"a": "kW", "b": "degC"}},
         samples=READ,
         lines=(10, 3, 7, 0),
@@ -99,7 +109,7 @@ TABLES = [
     Case(
         12,
         "remarks column with quoted separators and doubled quotes",
-        {"1.csv": 't;remark;a;b\n2026-07-01 00:00;"late; ""again""";1;2\n2026-07-01 00:01;;3;4\n2026-07-01 00:02;x;5;6\n'},
+        {"1.csv": "t;remark;a;b\n" + REMARK + "2026-07-01 00:01;;3;4\n2026-07-01 00:02;x;5;6\n"},
         samples=READ,
         lines=(4, 3, 1, 0),
         cells=THREE_USED,
@@ -109,7 +119,7 @@ TABLES = [
     Case(
         12,
         "line break within a quoted remark",
-        {"1.csv": 't;a;b;remark\n2026-07-01 00:00;1;2;ok\n2026-07-01 00:01;3;4;"stopped\nby hand"\n2026-07-01 00:02;5;6;\n'},
+        {"1.csv": "t;a;b;remark\n2026-07-01 00:00;1;2;ok\n" + BROKEN_REMARK + "2026-07-01 00:02;5;6;\n"},
         samples=[READ[0], READ[1], READ[2]],
         lines=(5, 3, 1, 1),
         cells=THREE_USED,
@@ -137,7 +147,11 @@ TABLES = [
     Case(
         16,
         "columns in another order, another column between",
-        {"1.csv": HEAD + ONE, "2.csv": "t;b;z;a\n2026-07-01 00:01;4;9;3\n", "3.csv": "t;b;a\n2026-07-01 00:02;6;5\n"},
+        {
+            "1.csv": HEAD + ONE,
+            "2.csv": "t;b;z;a\n2026-07-01 00:01;4;9;3\n",
+            "3.csv": "t;b;a\n2026-07-01 00:02;6;5\n",
+        },
         samples=READ,
         lines=(6, 3, 3, 0),
         cells=THREE_USED,
@@ -150,7 +164,7 @@ TABLES = [
         refused=True,
         said=["logs/1.csv:1", 'the heading "a" stands in columns 2 and 4'],
     ),
-]  # fmt: skip
+]
 
 TEXTS = [
     Case(
@@ -297,7 +311,7 @@ CELLS = [
     Case(
         13,
         "texts in a column of numbers",
-        {"1.csv": HEAD + "".join(f"2026-07-01 00:{at:02};{word};{at}\n" for at, word in enumerate(["1", *WORDS]))},
+        {"1.csv": minutes("t;a;b", "1", *WORDS)},
         cells={
             "a": {"used": 1, "status word": 6, "unparseable": 3, "empty": 1},
             "b": {"used": 11},
@@ -319,14 +333,14 @@ CELLS = [
     Case(
         14,
         "sentinels, and a broken thermocouple out of range",
-        {"1.csv": HEAD + "".join(f"2026-07-01 00:0{at};{a};{at}\n" for at, a in enumerate(["20", -9999, "1e30", "-200", "850", "3276.7", "21"]))},
+        {"1.csv": minutes("t;a;b", 20, -9999, "1e30", -200, 850, 3276.7, 21)},
         export={"sentinels": (-9999.0, 1e30, 3276.7)},
         tags={"a": {"believable": (-50.0, 400.0)}},
         cells={"a": {"used": 2, "sentinel": 3, "out of range": 2}, "b": {"used": 7}},
         found=[FindingCode.OUT_OF_RANGE],
         said=["-200", "850"],
     ),
-]  # fmt: skip
+]
 
 
 @every(TABLES)

@@ -277,8 +277,14 @@ REPEATS = [
 SECONDS = 1_782_864_000
 """2026-07-01 00:00 UTC, seconds after 1970 without leap seconds (POSIX)."""
 STAMPS = [
-    Case(31, name, {"1.csv": HEAD + "".join(f"{at};{a};{b}\n" for at, a, b in zip(stamps, "135", "246", strict=True))},
-         export={"date_order": order}, samples=READ, cells=THREE_USED)
+    Case(
+        31,
+        name,
+        {"1.csv": HEAD + "".join(f"{at};{a};{b}\n" for at, a, b in zip(stamps, "135", "246", strict=True))},
+        export={"date_order": order},
+        samples=READ,
+        cells=THREE_USED,
+    )
     for name, order, stamps in (
         ("year of two digits", "day first", [f"01.07.26 00:0{at}" for at in range(3)]),
         ("letters T and Z", "year first", [f"2026-07-01T00:0{at}:00Z" for at in range(3)]),
@@ -289,9 +295,15 @@ STAMPS = [
         ("epoch milliseconds", "epoch milliseconds", [f"{SECONDS + 60 * at}000" for at in range(3)]),
     )
 ] + [
-    Case(31, "epoch milliseconds declared as seconds", {"1.csv": f"t;a;b\n{SECONDS}000;1;2\n"},
-         export={"date_order": "epoch seconds"}, refused=True, said=["exports.x.date_order", f'"{SECONDS}000"']),
-]  # fmt: skip
+    Case(
+        31,
+        "epoch milliseconds declared as seconds",
+        {"1.csv": f"t;a;b\n{SECONDS}000;1;2\n"},
+        export={"date_order": "epoch seconds"},
+        refused=True,
+        said=["exports.x.date_order", f'"{SECONDS}000"'],
+    ),
+]
 
 
 @every(CLOCKS)

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from pathlib import Path
 
-from catalogue import Case, every, hold
+from catalogue import Case, every, hold, minutes
 
 from auditor.records.findings import FindingCode
 from auditor.records.machines import Running
@@ -28,7 +28,7 @@ COUNTERS = [
     Case(
         33,
         "a counter is its difference, whatever stands between",
-        {"1.csv": "t;a\n2026-07-01 00:00;1000\n2026-07-01 00:01;Bad\n2026-07-01 00:02;\n2026-07-01 00:03;1030\n"},
+        {"1.csv": minutes("t;a", 1000, "Bad", "", 1030)},
         columns=ONLY_A,
         tags={"a": {"between": "counter", "si_unit": "J", "hold_s": 900.0}},
         cells={"a": {"used": 2, "status word": 1, "empty": 1}},
@@ -87,13 +87,13 @@ COUNTERS = [
     Case(
         58,
         "whole steps of a counter that is read every minute",
-        {"1.csv": "t;a\n" + "".join(f"2026-07-01 00:{at:02};{100 + at // 4}\n" for at in range(41))},
+        {"1.csv": minutes("t;a", *(100 + at // 4 for at in range(41)))},
         columns=ONLY_A,
         tags={"a": {"between": "counter", "si_unit": "J", "at_most": 0.5 / 60, "hold_s": 900.0}},
         cells={"a": {"used": 41}},
         totals={"a": 10.0},
     ),
-]  # fmt: skip
+]
 
 RUNS = {"running": {"m": Running("b", 20.0, None)}, "users": {"a": ("m",), "b": ("m",)}}
 THREE_HOURS = ("2026-07-01T00:00", "2026-07-01T03:00")
@@ -155,7 +155,7 @@ SENSORS = [
     Case(
         49,
         "a flow about zero at standstill, below its cut-off",
-        {"1.csv": "t;a\n" + "".join(f"2026-07-01 00:0{at};{value}\n" for at, value in enumerate([-0.8, 0.3, 250, -0.8]))},
+        {"1.csv": minutes("t;a", -0.8, 0.3, 250, -0.8)},
         columns=ONLY_A,
         tags={"a": {"between": "step", "hold_s": 60.0, "cut_off": 1.0}},
         cells={"a": {"used": 4}},
@@ -164,14 +164,14 @@ SENSORS = [
     Case(
         51,
         "kelvin in a column declared in degrees Celsius",
-        {"1.csv": "t;a\n" + "".join(f"2026-07-01 00:0{at};{548 + at}\n" for at in range(3))},
+        {"1.csv": minutes("t;a", 548, 549, 550)},
         columns=ONLY_A,
         tags={"a": {"offset": 273.15, "believable": (223.15, 723.15)}},
         cells={"a": {"out of range": 3}},
         found=[FindingCode.OUT_OF_RANGE],
         said=["548", "550"],
     ),
-]  # fmt: skip
+]
 
 FORMULAS = ["=1+1", "+1-2", "-2+3", "@SUM(A1)", "<script>x()</script>", "1"]
 TEXTS = [
@@ -187,14 +187,14 @@ TEXTS = [
     Case(
         64,
         "formulas in cells and markup in a heading",
-        {"1.csv": "t;<b>a</b>\n" + "".join(f"2026-07-01 00:0{at};{cell}\n" for at, cell in enumerate(FORMULAS))},
+        {"1.csv": minutes("t;<b>a</b>", *FORMULAS)},
         columns={"a": "<b>a</b>"},
         cells={"a": {"used": 1, "unparseable": 3, "status word": 2}},
         lines=(7, 6, 1, 0),
         found=[FindingCode.STATUS_WORDS],
         said=["@SUM(A1)", "<script>x()</script>"],
     ),
-]  # fmt: skip
+]
 
 
 @every(COUNTERS)
