@@ -280,6 +280,15 @@ TEXTS = [
         found=[FindingCode.UNREADABLE_FILE],
     ),
     Case(
+        10,
+        "archive without files",
+        {"1.csv": PLAIN, "2.zip": zipped()},
+        samples=READ,
+        cells=THREE_USED,
+        found=[FindingCode.UNREADABLE_FILE],
+        said=["could not be read: archive without files"],
+    ),
+    Case(
         11,
         "stamps turned into day numbers by a spreadsheet",
         {"1.csv": HEAD + "46204;1;2\n46204.000694;3;4\n"},
