@@ -90,18 +90,63 @@ def seeds() -> list[Seed]:
     ]
     texts: list[tuple[list[str], str, str, dict[str, Any]]] = [
         ([head, *rows(iso, two)], "\n", "utf-8", {}),
-        ([head, *rows("%d.%m.%Y %H:%M", comma)], "\r\n", "cp1252", {"date_order": "day first", "decimal": ","}),
-        ([head.replace(";", "\t"), *rows("%m/%d/%Y %H:%M:%S", two, "\t")], "\r", "utf-16", {"date_order": "month first"}),
-        ([head.replace(";", ","), *rows(iso, lambda at: [f'"{cell}"' for cell in two(at)], ",")], "\r\n", "utf-8-sig", {}),
-        (["Logger 7", "", head, ";[m3/h];kW", *rows(iso, two), "", "Total;1;2"], "\n", "utf-8", {"units": {"a": "m3/h", "b": "kW"}}),
-        (["time,point,reading", *long_rows], "\n", "utf-8", {"layout": LongLayout("time", "point", "reading")}),
-        ([head, *rows(iso, lambda at: ["-9999" if at % 7 == 0 else "Störung", two(at)[1]])], "\n", "utf-8", {"sentinels": (-9999.0,), "status_words": {"off": 0.0}}),
-        (["day;clock;Kühler ein;Kühler aus", *rows("%Y-%m-%d;%H:%M:%S", two)], "\n", "utf-8", {"stamp_columns": ("day", "clock")}),
-        ([head, *[f"{int(START.timestamp()) + 60 * at};{at};{at}" for at in range(60)]], "\n", "utf-8", {"date_order": "epoch seconds"}),
+        (
+            [head, *rows("%d.%m.%Y %H:%M", comma)],
+            "\r\n",
+            "cp1252",
+            {"date_order": "day first", "decimal": ","},
+        ),
+        (
+            [head.replace(";", "\t"), *rows("%m/%d/%Y %H:%M:%S", two, "\t")],
+            "\r",
+            "utf-16",
+            {"date_order": "month first"},
+        ),
+        (
+            [head.replace(";", ","), *rows(iso, lambda at: [f'"{cell}"' for cell in two(at)], ",")],
+            "\r\n",
+            "utf-8-sig",
+            {},
+        ),
+        (
+            ["Logger 7", "", head, ";[m3/h];kW", *rows(iso, two), "", "Total;1;2"],
+            "\n",
+            "utf-8",
+            {"units": {"a": "m3/h", "b": "kW"}},
+        ),
+        (
+            ["time,point,reading", *long_rows],
+            "\n",
+            "utf-8",
+            {"layout": LongLayout("time", "point", "reading")},
+        ),
+        (
+            [head, *rows(iso, lambda at: ["-9999" if at % 7 == 0 else "Störung", two(at)[1]])],
+            "\n",
+            "utf-8",
+            {"sentinels": (-9999.0,), "status_words": {"off": 0.0}},
+        ),
+        (
+            ["day;clock;Kühler ein;Kühler aus", *rows("%Y-%m-%d;%H:%M:%S", two)],
+            "\n",
+            "utf-8",
+            {"stamp_columns": ("day", "clock")},
+        ),
+        (
+            [head, *[f"{int(START.timestamp()) + 60 * at};{at};{at}" for at in range(60)]],
+            "\n",
+            "utf-8",
+            {"date_order": "epoch seconds"},
+        ),
         ([head, *rows("%Y-10-26 0%M:%S", two)], "\n", "utf-8", {"clock": "Europe/Copenhagen"}),
         ([head, *rows(iso, two)[::-1]], "\n", "utf-8", {"when_stamps_repeat": "reject both"}),
-        ([head, *rows(iso, lambda at: [str(1000 + 3 * at), "on" if at % 9 else "off"])], "\n", "utf-8", {"states": {"b": {"on": "on", "off": "off"}}}),
-    ]  # fmt: skip
+        (
+            [head, *rows(iso, lambda at: [str(1000 + 3 * at), "on" if at % 9 else "off"])],
+            "\n",
+            "utf-8",
+            {"states": {"b": {"on": "on", "off": "off"}}},
+        ),
+    ]
     made = []
     for number, (lines, end, encoding, changes) in enumerate(texts):
         export, tags = make_export(columns, **changes)
@@ -120,70 +165,154 @@ def seeds() -> list[Seed]:
 
 
 SPLICES = (
-    *(b'"', b'""', b";", b",", b"\t", b"\r", b"\n", b"\r\n", b"\n\n", b"\0", b"\0" * 600, b"\xff\xfe", b"\xef\xbb\xbf"),
-    *(b"'", b"\\", b"#", b"\x1a", b"\x85", b"\xe2\x80\xa8", b"\xc2\xa0", b"\x0b\x0c", b"-", b"+", b"=1+1", b"1e999"),
-    *(b"NaN", b"inf", b"<0.5", b"24:00:00", b"2026-02-31 00:00:00", b"1970-01-01 00:00:00", b"9999-12-31 23:59:59"),
-    *(b"0000-00-00 00:00", b"2026-07-01T00:00:00+25:00", b"99999999999999999999", b"-9999", b"x" * 70_000, b"<b>&amp;"),
+    *(
+        b'"',
+        b'""',
+        b";",
+        b",",
+        b"\t",
+        b"\r",
+        b"\n",
+        b"\r\n",
+        b"\n\n",
+        b"\0",
+        b"\0" * 600,
+        b"\xff\xfe",
+        b"\xef\xbb\xbf",
+    ),
+    *(
+        b"'",
+        b"\\",
+        b"#",
+        b"\x1a",
+        b"\x85",
+        b"\xe2\x80\xa8",
+        b"\xc2\xa0",
+        b"\x0b\x0c",
+        b"-",
+        b"+",
+        b"=1+1",
+        b"1e999",
+    ),
+    *(
+        b"NaN",
+        b"inf",
+        b"<0.5",
+        b"24:00:00",
+        b"2026-02-31 00:00:00",
+        b"1970-01-01 00:00:00",
+        b"9999-12-31 23:59:59",
+    ),
+    *(
+        b"0000-00-00 00:00",
+        b"2026-07-01T00:00:00+25:00",
+        b"99999999999999999999",
+        b"-9999",
+        b"x" * 70_000,
+        b"<b>&amp;",
+    ),
     *("Störung".encode(), "Störung".encode("cp1252"), "Störung".encode("utf-16"), b";" * 5000, b'"' * 3001),
-)  # fmt: skip
+)
+
+
+def flip_a_bit(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """One bit the other way."""
+    return content[:at] + bytes([content[at] ^ 1 << chance.randrange(8)]) + content[at + 1 :]
+
+
+def change_a_byte(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Any byte in place of one."""
+    return content[:at] + bytes([chance.randrange(256)]) + content[at + 1 :]
+
+
+def cut_off(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """The end is missing."""
+    return content[:at]
+
+
+def cut_out(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """A piece is missing."""
+    return content[:at] + content[to:]
+
+
+def splice(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Something odd stands in between."""
+    return content[:at] + chance.choice(SPLICES) + content[at:]
+
+
+def write_twice(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """A piece stands twice."""
+    return content[:at] + content[at:to] * 2 + content[to:]
+
+
+def blank_out(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """A piece is zero bytes."""
+    return content[:at] + bytes(to - at) + content[to:]
+
+
+def move(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """A piece has moved to the front."""
+    return content[at:to] + content[:at] + content[to:]
+
+
+def shuffle_lines(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Lines in any order."""
+    lines = content.splitlines(keepends=True)
+    chance.shuffle(lines)
+    return b"".join(lines)
+
+
+def repeat_a_line(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """A line stands many times."""
+    lines = content.splitlines(keepends=True)
+    place = chance.randrange(len(lines))
+    return b"".join([*lines[:place], lines[place] * chance.choice((2, 3, 50)), *lines[place + 1 :]])
+
+
+def exchange_marks(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Another separator, decimal mark or line end, here and there or everywhere."""
+    pairs = (b";,", b".,", b",.", b"\n\r", b"-/", b":.")
+    old, new = (bytes([mark]) for mark in chance.choice(pairs))
+    return content.replace(old, new, chance.choice((1, 5, -1)))
+
+
+def recode(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Another encoding."""
+    pairs = (("utf-8", "utf-16"), ("cp1252", "utf-8"), ("utf-16", "utf-8"), ("utf-8", "cp1252"))
+    old, new = chance.choice(pairs)
+    return content.decode(old, "replace").encode(new, "replace")
+
+
+def change_a_cell(content: bytes, at: int, to: int, chance: random.Random) -> bytes:
+    """Something odd in place of a cell or of a separator."""
+    lines = content.splitlines(keepends=True)
+    place = chance.randrange(len(lines))
+    cells = re.split(rb"([;,\t])", lines[place])
+    cells[chance.randrange(len(cells))] = chance.choice(SPLICES)
+    return b"".join([*lines[:place], b"".join(cells), *lines[place + 1 :]])
+
+
+DAMAGES = (
+    *(flip_a_bit, change_a_byte, cut_off, cut_out, splice, splice, write_twice, blank_out, move),
+    *(shuffle_lines, repeat_a_line, exchange_marks, recode, change_a_cell),
+)
 
 
 def damage(content: bytes, chance: random.Random) -> bytes:
     """Damage an export once."""
-    size = len(content)
-    if not size:
-        return content + chance.choice(SPLICES)
-    at, to = sorted((chance.randrange(size), chance.randrange(size)))
-    match chance.randrange(14):
-        case 0:
-            return content[:at] + bytes([content[at] ^ 1 << chance.randrange(8)]) + content[at + 1 :]
-        case 1:
-            return content[:at] + bytes([chance.randrange(256)]) + content[at + 1 :]
-        case 2:
-            return content[:at]
-        case 3:
-            return content[:at] + content[to:]
-        case 4 | 5:
-            return content[:at] + chance.choice(SPLICES) + content[at:]
-        case 6:
-            return content[:at] + content[at:to] * 2 + content[to:]
-        case 7:
-            return content[:at] + bytes(to - at) + content[to:]
-        case 8:
-            return content[at:to] + content[:at] + content[to:]
-        case 9:
-            lines = content.splitlines(keepends=True)
-            chance.shuffle(lines)
-            return b"".join(lines)
-        case 10:
-            lines = content.splitlines(keepends=True)
-            place = chance.randrange(len(lines))
-            return b"".join([*lines[:place], lines[place] * chance.choice((2, 3, 50)), *lines[place:]])
-        case 11:
-            old, new = chance.choice(
-                ((b";", b","), (b".", b","), (b",", b"."), (b"\n", b"\r"), (b"-", b"/"), (b":", b"."))
-            )
-            return content.replace(old, new, chance.choice((1, 5, -1)))  # fmt: skip
-        case 12:
-            encodings = chance.choice(
-                (("utf-8", "utf-16"), ("cp1252", "utf-8"), ("utf-16", "utf-8"), ("utf-8", "cp1252"))
-            )
-            return content.decode(encodings[0], "replace").encode(encodings[1], "replace")  # fmt: skip
-        case _:
-            lines = content.splitlines(keepends=True)
-            place = chance.randrange(len(lines))
-            cells = re.split(rb"([;,\t])", lines[place])
-            cells[chance.randrange(len(cells))] = chance.choice(SPLICES)
-            return b"".join([*lines[:place], b"".join(cells), *lines[place + 1 :]])
+    if not content:
+        return chance.choice(SPLICES)
+    at, to = sorted((chance.randrange(len(content)), chance.randrange(len(content))))
+    return chance.choice(DAMAGES)(content, at, to, chance)
 
 
-class TooSlow(Exception):
+class TooSlowError(Exception):
     """An input took longer than its limit."""
 
 
 def too_slow(*_: object) -> None:
     """Answer the alarm clock."""
-    raise TooSlow
+    raise TooSlowError
 
 
 def examine(folder: Path, seed: Seed, content: bytes, beside: bool) -> str:
@@ -238,6 +367,8 @@ def work(job: int, jobs: int, inputs: int, start: int, keep: Path) -> Counter[st
     kinds = seeds()
     with tempfile.TemporaryDirectory() as name:
         for number in range(job, inputs, jobs):
+            if job == 0 and number and number % (5_000 * jobs) == 0:
+                print(f"about {number} of {inputs} inputs", flush=True)
             chance = random.Random(start * 1_000_003 + number)
             seed = chance.choice(kinds)
             content = seed.content

@@ -85,6 +85,16 @@ COUNTERS = [
         totals={"a": 700.0},
     ),
     Case(
+        61,
+        "read by hand at either end of the day: the sum is known, its place in time is not",
+        {"1.csv": "t;a\n2026-07-01 00:00;1000\n2026-07-02 00:00;3400\n"},
+        columns=ONLY_A,
+        tags={"a": {"between": "counter", "si_unit": "J", "hold_s": 900.0}},
+        cells={"a": {"used": 1, "carried in": 1}},
+        totals={"a": 2400.0},
+        found=[FindingCode.GAP],
+    ),
+    Case(
         58,
         "whole steps of a counter that is read every minute",
         {"1.csv": minutes("t;a", *(100 + at // 4 for at in range(41)))},
