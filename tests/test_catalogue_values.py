@@ -90,7 +90,7 @@ COUNTERS = [
         {"1.csv": "t;a\n2026-07-01 00:00;1000\n2026-07-02 00:00;3400\n"},
         columns=ONLY_A,
         tags={"a": {"between": "counter", "si_unit": "J", "hold_s": 900.0}},
-        cells={"a": {"used": 1, "carried in": 1}},
+        cells={"a": {"used": 1, "outside period": 1}},
         totals={"a": 2400.0},
         found=[FindingCode.GAP],
     ),
