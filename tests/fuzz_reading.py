@@ -4,7 +4,8 @@ Run by hand, it is no test of the suite::
 
     python tests/fuzz_reading.py --inputs 200000 --seed 1 --jobs 2
 
-Every input is one export, damaged one to six times, read alone or beside a whole file of the same export.
+Every input is one export, damaged one to six times, read alone or beside a whole file of the same export,
+every third one again in small pieces.
 Same seed, same inputs. The exit code is 1 if anything failed; failing inputs are kept in ``--keep``.
 """
 
@@ -30,12 +31,13 @@ from dataclasses import dataclass, replace
 from datetime import UTC, datetime, timedelta
 from pathlib import Path
 from typing import Any
+from unittest.mock import patch
 
 import numpy as np
 from log_reading_factory import make_export
 
 from auditor.cleaning import CleaningSettings, clean
-from auditor.log_reading import read_export, recognise, recognition_notes
+from auditor.log_reading import Recognition, read_export, recognise, recognition_notes
 from auditor.records.errors import AuditorError
 from auditor.records.period import Grid, Period
 from auditor.records.plant import Export, LongLayout, Tag
@@ -315,48 +317,96 @@ def too_slow(*_: object) -> None:
     raise TooSlowError
 
 
-def examine(folder: Path, seed: Seed, content: bytes, beside: bool) -> str:
-    """Read one input and hold what must hold; what became of it in a word."""
-    for old in folder.iterdir():
-        old.unlink()
-    (folder / f"damaged{seed.suffix}").write_bytes(content)
-    if beside:
-        (folder / f"whole{seed.suffix}").write_bytes(seed.content)
-    blocks: list[SampleBlock] = []
-    notes: list[ReadingNote] = []
-    try:
-        recognition = recognise(folder, {"x": seed.export}, seed.tags)
-        for piece in read_export(recognition, "x", (PERIOD_US[0] - 10**12, PERIOD_US[1] + 10**12)):
-            notes.append(piece) if isinstance(piece, ReadingNote) else blocks.append(piece)
-    except AuditorError:
-        return "refused"
+@dataclass(frozen=True)
+class Got:
+    """Everything that was read."""
+
+    recognition: Recognition
+    blocks: tuple[SampleBlock, ...]
+    notes: tuple[ReadingNote, ...]
+
+    def cells(self, tag: str) -> int:
+        """Cells of a tag, good and bad."""
+        places = [(block, block.tags.index(tag)) for block in self.blocks]
+        return sum(
+            int(np.isfinite(block.values[at]).sum() + block.rejected[at].sum()) for block, at in places
+        )
+
+    def rows(self) -> list[bytes]:
+        """Stamp, line and values of every row, as bytes: a row that is not a number equals itself."""
+        return [
+            row.tobytes()
+            for block in self.blocks
+            for row in np.column_stack(
+                [block.instants_us.view(np.float64), block.line.view(np.float64), block.values.T]
+            )
+        ]
+
+    def lines(self) -> list[tuple[str, int, int, int, int]]:
+        """The account of every file."""
+        return [
+            (note.file, note.lines, note.lines_data, note.lines_skipped, note.lines_rejected)
+            for note in self.notes
+        ]
+
+
+def read_input(folder: Path, seed: Seed) -> Got:
+    """Recognise and read a folder."""
+    window_us = (PERIOD_US[0] - 10**12, PERIOD_US[1] + 10**12)
+    recognition = recognise(folder, {"x": seed.export}, seed.tags)
+    pieces = list(read_export(recognition, "x", window_us))
+    notes = tuple(piece for piece in pieces if isinstance(piece, ReadingNote))
+    return Got(recognition, tuple(piece for piece in pieces if isinstance(piece, SampleBlock)), notes)
+
+
+def hold_cells(seed: Seed, got: Got) -> None:
+    """Clean, and hold that every cell and every microsecond is in its ledger."""
     settings = CleaningSettings({"x": seed.export}, seed.tags, (), {}, {})
-    table, _ = clean({"x": iter(blocks)}, settings, GRID)
-    cells = {tag: 0 for tag in seed.tags}
-    for block in blocks:
-        finite = np.isfinite(block.values).sum(axis=1) + block.rejected.sum(axis=1)
-        for tag, count in zip(block.tags, finite.tolist(), strict=True):
-            cells[tag] += count
-        assert (np.diff(block.instants_us) >= 0).all(), "stamps fall within a block"
+    table, _ = clean({"x": iter(got.blocks)}, settings, GRID)
+    cells = {tag: got.cells(tag) for tag in seed.tags}
     told = dict(zip(table.cells.tags, table.cells.counts.sum(axis=1).tolist(), strict=True))
     assert told == cells, f"cells given {cells}, in the ledger {told}"
     assert (table.seconds.microseconds.sum(axis=1) == PERIOD_US[1] - PERIOD_US[0]).all(), "seconds"
-    data = sum(note.lines_data for note in notes)
-    rejected = sum(note.lines_rejected for note in notes)
+    data = sum(note.lines_data for note in got.notes)
+    whole = data + sum(note.lines_rejected for note in got.notes)
     if seed.export.layout is None:
-        assert data <= max(cells.values(), default=0) <= data + rejected or not data, "cells against lines"
+        assert data <= max(cells.values(), default=0) <= whole or not data, "cells against lines"
     else:
-        assert sum(cells.values()) <= data + rejected, "cells against lines"
-    for note in notes:
+        assert sum(cells.values()) <= whole, "cells against lines"
+
+
+def hold_lines(folder: Path, content: bytes, got: Got) -> None:
+    """Hold that every file has its note, and every line of it its place."""
+    for note in got.notes:
         assert note.lines_data + note.lines_skipped + note.lines_rejected == note.lines, "lines do not add up"
         if note.file == "damaged.csv" and note.lines and "16" not in note.encoding:
             ends = len(PASSED.findall(content)) + (not content.endswith((b"\r", b"\n")))
             assert note.lines == ends, f"{note.lines} lines told, {ends} in the file ({note.encoding})"
-    everything = [note.file.partition("!")[0] for note in (*notes, *recognition_notes(recognition))]
-    assert set(everything) == {path.name for path in folder.iterdir()}, "a file without a note"
-    return (
-        "read" if any(note.file.startswith("damaged") and note.lines_data for note in notes) else "set aside"
-    )
+    everything = (*got.notes, *recognition_notes(got.recognition))
+    names = {note.file.partition("!")[0] for note in everything}
+    assert names == {path.name for path in folder.iterdir()}, "a file without a note"
+
+
+def examine(folder: Path, seed: Seed, content: bytes, chance: random.Random) -> str:
+    """Read one input and hold what must hold; what became of it in a word."""
+    for old in folder.iterdir():
+        old.unlink()
+    (folder / f"damaged{seed.suffix}").write_bytes(content)
+    if chance.random() < 0.5:
+        (folder / f"whole{seed.suffix}").write_bytes(seed.content)
+    try:
+        got = read_input(folder, seed)
+    except AuditorError:
+        return "refused"
+    hold_lines(folder, content, got)
+    hold_cells(seed, got)
+    if chance.random() < 0.3:
+        with patch("auditor.log_reading.chunks.CHUNK", chance.randrange(200, 4000)):
+            cut = read_input(folder, seed)
+        assert cut.lines() == got.lines(), "where a file is cut changes its lines"
+        assert cut.rows() == got.rows(), "where a file is cut changes its rows"
+    is_read = any(note.file.startswith("damaged") and note.lines_data for note in got.notes)
+    return "read" if is_read else "set aside"
 
 
 def work(job: int, jobs: int, inputs: int, start: int, keep: Path) -> Counter[str]:
@@ -377,7 +427,7 @@ def work(job: int, jobs: int, inputs: int, start: int, keep: Path) -> Counter[st
             faulthandler.dump_traceback_later(6 * LIMIT_S, exit=True)
             signal.setitimer(signal.ITIMER_REAL, LIMIT_S)
             try:
-                counts[examine(Path(name), seed, content, chance.random() < 0.5)] += 1
+                counts[examine(Path(name), seed, content, chance)] += 1
             except Exception:
                 signal.setitimer(signal.ITIMER_REAL, 0)
                 counts["failed"] += 1
