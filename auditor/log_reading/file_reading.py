@@ -88,10 +88,8 @@ class FileReader:
         tally.strays += chunk.strays
         data = self._carried + chunk.data
         self._carried = b""
-        if chunk.first_line == 1:
-            head = min(dialect.first_data_line - 1, data.count(b"\n"))
-            data = without_lines(data, head)
-            tally.skipped, tally.lines = head, head
+        if chunk.first_line < dialect.first_data_line:
+            data = self._pass_over_head(data, dialect.first_data_line - chunk.first_line)
         if chunk.is_last:
             end = cut_end(data, dialect, self._export)
             data = end.body
@@ -114,6 +112,21 @@ class FileReader:
             tally.lines += end.footer_lines
             if end.torn is not None:
                 self._hold_back(end.torn)
+
+    def _pass_over_head(self, data: bytes, count: int) -> bytes:
+        """Take off the lines down to the heading; rows above it (the file was sorted) are rejected."""
+        tally = self._tally
+        below = without_lines(data, min(count, data.count(b"\n")))
+        head = data[: len(data) - len(below)]
+        columns = read_columns(head, self._shape, Learnt())
+        texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
+        stamps = read_stamps(texts, self._export.date_order)
+        lost = columns.line[stamps.good & np.isfinite(columns.values).any(axis=0)]
+        if lost.size:
+            tally.reject_line(tally.lines + int(lost[0]) + 1, _line_texts(head, lost[:1])[0], lost.size)
+        tally.skipped += head.count(b"\n") - lost.size
+        tally.lines += head.count(b"\n")
+        return below
 
     def _hold_back(self, text: str) -> None:
         tally = self._tally

@@ -207,6 +207,8 @@ def _set_aside(path: str, size: int) -> str:
 def _members(stored: StoredFile) -> tuple[StoredFile, ...]:
     with zipfile.ZipFile(stored.real) as archive:
         entries = sorted(archive.infolist(), key=lambda entry: entry.filename)
+    if all(entry.is_dir() for entry in entries):
+        raise UnreadableError("archive without files")
     return tuple(
         StoredFile(
             f"{stored.path}!{entry.filename}",

@@ -129,7 +129,12 @@ def _touches(pair: tuple[Piece, _Cursor], cluster: list[tuple[Piece, _Cursor]], 
     start_us = _span(pair[0])[0]
     # A stamp that goes on in the next chunk of the same file is in order already.
     is_next = len(cluster) == 1 and cluster[0][1] is pair[1]
-    return start_us < end_us or (start_us == end_us and not is_next)
+    return start_us < end_us or (start_us == end_us and not (is_next and _below(pair[0], cluster[0][0])))
+
+
+def _below(piece: Piece, other: Piece) -> bool:
+    """Whether all rows of a piece stand below those of another one of the same file."""
+    return piece.line.size == 0 or other.line.size == 0 or bool(other.line.max() < piece.line.min())
 
 
 def _span(piece: Piece) -> tuple[int, int]:
