@@ -10,7 +10,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from auditor.log_reading.cells import read_number
-from auditor.log_reading.stamps import read_stamps, texts_of
+from auditor.log_reading.stamps import read_stamps, style_of, texts_of
 from auditor.records.errors import Fault
 from auditor.records.plant import Export, Tag
 from auditor.units import UnitError, same_unit, split_qualifier
@@ -205,7 +205,7 @@ def _bind(head: Sequence[str], row: int, delimiter: str, export: Export, tags: M
 def _stamp_lines(head: Sequence[str], delimiter: str, stamp: tuple[int, ...], export: Export) -> list[bool]:
     rows = [split_fields(line, delimiter) for line in head]
     columns = [texts_of([row[place] if place < len(row) else "" for row in rows]) for place in stamp]
-    return [bool(good) for good in read_stamps(columns, export.date_order).good]
+    return [bool(good) for good in read_stamps(columns, style_of(export)).good]
 
 
 def _first_data(

@@ -21,7 +21,7 @@ from auditor.log_reading.look import number_columns, row_shape, to_instants, wit
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
 from auditor.log_reading.recognition import RecognisedFile
-from auditor.log_reading.stamps import Stamps, Texts, read_stamps
+from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
 from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, Tag
@@ -134,7 +134,7 @@ class FileReader:
         columns = read_columns(data, self._shape, self._learnt)
         self._learnt = columns.learnt
         texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        return columns, read_stamps(texts, self._export.date_order), texts
+        return columns, read_stamps(texts, style_of(self._export)), texts
 
     def _open_hour(self, stamps: Stamps, columns: Columns) -> int | None:
         """First line of a repeated hour that reaches the end of the chunk: its passes may go on."""

@@ -15,7 +15,7 @@ from auditor.log_reading.dialect import Dialect, find_dialect, heading_key, spli
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.listing import Claim
 from auditor.log_reading.samples import Sample, Sampled, line_at, take_samples
-from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words
+from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words, style_of
 from auditor.log_reading.table import Columns, Learnt, Shape, as_texts, distinct, read_columns
 from auditor.records.plant import DateOrder, Export, Tag
 
@@ -26,6 +26,7 @@ _ORDERS: tuple[DateOrder, ...] = (
     "month first",
     "epoch seconds",
     "epoch milliseconds",
+    "spreadsheet days",
 )
 
 
@@ -170,14 +171,16 @@ class _Seen:
         if self._dialect.is_long:
             self.names |= dict.fromkeys(heading_key(name) for name in distinct(columns.texts[-1])[1])
             texts = texts[:-1]
-        stamps = read_stamps(texts, self._export.date_order)
+        stamps = read_stamps(texts, style_of(self._export))
         self._add_stamps(stamps, texts)
         bad = np.flatnonzero(~stamps.good & (texts[0].ends > texts[0].starts))
         if bad.size and (self.bad_stamp is None or self.against is None):
             self._add_bad(bad, texts, (sample, columns, skipped, is_head))
         if not self.proven and self._export.date_order in _ORDERS[:3]:
             others = [
-                read_stamps(texts, order).good for order in _ORDERS[:3] if order != self._export.date_order
+                read_stamps(texts, style_of(self._export, order)).good
+                for order in _ORDERS[:3]
+                if order != self._export.date_order
             ]
             self.proven = bool((stamps.good & ~np.any(others, axis=0)).any())
 
@@ -187,7 +190,7 @@ class _Seen:
         if not good.size:
             return
         if not self.stamp_format:
-            words = [shape_in_words(column.at(int(good[0])), self._export.date_order) for column in texts]
+            words = [shape_in_words(column.at(int(good[0])), style_of(self._export)) for column in texts]
             time = texts[1].at(int(good[0])).strip() if len(texts) > 1 else ""
             self.stamp_format = words[0] + (", the time of day in a column of its own" if time else "")
         self.first_us = min(self.first_us, int(utc_us[good].min()))
@@ -216,7 +219,7 @@ class _Seen:
         for order in _ORDERS:
             if self.against is not None or order == self._export.date_order:
                 continue
-            other = read_stamps([column.take(bad) for column in texts], order).good
+            other = read_stamps([column.take(bad) for column in texts], style_of(self._export, order)).good
             if other.any():
                 row = int(bad[np.argmax(other)])
                 text = " ".join(column.at(row).strip() for column in texts)

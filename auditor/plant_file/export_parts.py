@@ -11,15 +11,19 @@ from auditor.plant_file.leaves import (
     Duration,
     Encoding,
     FilePatterns,
+    MonthNames,
+    NameOrNames,
     OneLine,
     OwnUnitValue,
     Spread,
     StampColumns,
+    TagPattern,
     UnitText,
 )
 from auditor.plant_file.parts import Choice, Part, keys_of, optional, required
 
 _BETWEEN = "what the value means between two stamps: step, line, mean, amount, counter or state"
+_COLUMN = "heading of the column; in a long export, or with one file per tag, the name of the tag there"
 _HOLD = "longest time between two samples that is still covered"
 _FULL_STRETCH = "longest stretch that one stamp can stand for"
 _UNCERTAINTY = 'a bare number is in the tag\'s own unit, "2 %" is of the reading, "2 % of 1200 kW" of a span'
@@ -30,7 +34,7 @@ class NumberTag(Part):
 
     either: ClassVar[tuple[tuple[str, str], ...]] = (("standard", "limit"),)
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    column: OneLine = required(_COLUMN, "OR-G")
     unit: UnitText = required("unit of the logged number", "kW")
     standard: Spread | None = optional(f"one standard uncertainty; {_UNCERTAINTY}", "0.5 %")
     limit: Spread | None = optional(
@@ -109,7 +113,7 @@ class CounterTag(NumberTag):
 class StateTag(Part):
     """The cell holds a state: a breaker, a mode."""
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "BKR")
+    column: OneLine = required(_COLUMN, "BKR")
     between: Literal["state"] = required(_BETWEEN, "state")
     hold: Duration = required(_HOLD, "5 min")
     states: dict[str, OneLine] = required(
@@ -137,7 +141,7 @@ class UndecidedTag(Part):
         key for form in _TAG_FORMS.values() for key in keys_of(form)
     )
 
-    column: OneLine = required("heading of the column; in a long export its name in the tag column", "OR-G")
+    column: OneLine = required(_COLUMN, "OR-G")
     between: Literal["step", "line", "mean", "amount", "counter", "state"] = required(_BETWEEN, "line")
 
 
@@ -146,12 +150,56 @@ def tag_form(raw: Mapping[str, Any]) -> type[Part]:
     return _TAG_FORMS.get(str(raw.get("between")), UndecidedTag)
 
 
+class QualityPart(Part):
+    """Column of a long export that says whether its value is good."""
+
+    column: OneLine = required("heading of the quality code", "quality")
+    good: NameOrNames = required(
+        "codes of good values, as they stand in the file; every other code is rejected and counted",
+        ["192", "good"],
+    )
+
+
 class LongLayoutPart(Part):
     """Headings of a long export: one row per stamp, tag and value."""
 
     stamp: OneLine = required("heading of the stamp", "time")
     tag: OneLine = required("heading of the column that names the tag", "point")
     value: OneLine = required("heading of the value", "reading")
+    quality: QualityPart | None = optional(
+        "column that says whether the value is good", {"column": "quality", "good": ["192", "good"]}
+    )
+
+
+class PairsLayoutPart(Part):
+    """Every tag has a stamp column of its own."""
+
+    pairs: Literal[True] = required(
+        "each tag's column has its own stamp column, at its left; the pairs may differ in length", True
+    )
+
+
+class FilePerTagPart(Part):
+    """Every file holds one tag; a tag's "column" is the name found in the file's name or first lines."""
+
+    either: ClassVar[tuple[tuple[str, str], ...]] = (("tag_in_file_name", "tag_in_preamble"),)
+
+    tag_in_file_name: TagPattern | None = optional(
+        "name of a file with {tag} where the name of its tag stands; * for any other text",
+        "trend_{tag}_*.csv",
+    )
+    tag_in_preamble: TagPattern | None = optional(
+        "line above the headings with {tag} where the name of the tag stands; * for any other text",
+        "Point: {tag}",
+    )
+    value: OneLine = required("heading of the value", "reading")
+
+
+def layout_form(raw: Mapping[str, Any]) -> type[Part]:
+    """Form of a layout other than one column per tag."""
+    if "pairs" in raw:
+        return PairsLayoutPart
+    return FilePerTagPart if {"tag_in_file_name", "tag_in_preamble"} & raw.keys() else LongLayoutPart
 
 
 class ExportPart(Part):
@@ -161,10 +209,17 @@ class ExportPart(Part):
         "patterns below logs/; where two of them hold the same stamp, the earlier one wins", ["power/*.csv"]
     )
     clock: Clock = required("whose clock the stamps are of: a zone, UTC or a fixed offset", "+01:00")
-    date_order: Literal["year first", "day first", "month first", "epoch seconds", "epoch milliseconds"] = (
-        required("how stamps are written", "day first")
-    )
+    date_order: Literal[
+        "year first", "day first", "month first", "epoch seconds", "epoch milliseconds", "spreadsheet days"
+    ] = required("how stamps are written; spreadsheet days are serial dates such as 45931.25", "day first")
     decimal: Literal[".", ","] = required("decimal mark of the numbers", ",")
+    thousands: Literal["space", "'", ".", ","] | None = optional(
+        "mark between groups of three digits; space stands for no-break and thin ones too", "space"
+    )
+    month_names: MonthNames | None = optional(
+        "names of the months in the stamps, January first; English names are known without",
+        ["jan", "feb", "mar", "apr", "maj", "jun", "jul", "aug", "sep", "okt", "nov", "dec"],
+    )
     repeated_hour: Literal["by order", "drop"] | None = optional(
         "how the hour is resolved that an autumn clock change repeats; by order without it", "by order"
     )
@@ -172,8 +227,11 @@ class ExportPart(Part):
         "column separator; found from the files without it", ";"
     )
     encoding: Encoding | None = optional("text encoding; found from the files without it", "cp1252")
-    layout: LongLayoutPart | None = optional(
-        "only for a long export, one row per stamp, tag and value",
+    layout: (
+        Annotated[LongLayoutPart | PairsLayoutPart | FilePerTagPart, Choice(layout_form)] | None
+    ) = optional(
+        "only where a file is not one column per tag with one stamp: one row per stamp, tag and value;"
+        " pairs of columns; or one file per tag",
         {"stamp": "time", "tag": "point", "value": "reading"},
     )
     stamp: StampColumns | None = optional(
