@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+import pyarrow as pa
 from numpy.typing import NDArray
 
 from auditor.log_reading.cells import CellReader, shortest
@@ -61,6 +62,8 @@ def decide_long(
 ) -> tuple[Cells, dict[str, int]]:
     """Decide every cell of a long chunk: its last text column is the tag, its only number the value.
 
+    Quality codes are another matter: see :mod:`~auditor.log_reading.quality`.
+
     Returns
     -------
     cells, unknown
@@ -74,9 +77,32 @@ def decide_long(
     for name, count, tag in zip(found_names, counts, tag_of_code.tolist(), strict=True):
         if tag < 0:
             unknown[heading_key(name)] = unknown.get(heading_key(name), 0) + count
-    tag_of_row = tag_of_code[codes]
-    values = columns.values.copy()
-    rows, texts = columns.words[0]
+    cells = decide_rows(columns.values, columns.words[0], tag_of_code[codes], (readers, sentinels))
+    return cells, unknown
+
+
+def decide_rows(
+    numbers: NDArray[np.float64],
+    texts_of_rows: tuple[NDArray[np.int64], pa.Array | None],
+    tag_of_row: NDArray[np.int64],
+    declared: tuple[Sequence[CellReader], Sequence[float]],
+) -> Cells:
+    """Decide one cell per row, each of the tag that ``tag_of_row`` says (-1: of none that is bound).
+
+    Parameters
+    ----------
+    numbers : ndarray
+        Shape (1, n); NaN where the cell is no plain number.
+    texts_of_rows : tuple
+        The rows without a number, and the texts that stand there.
+    tag_of_row : ndarray
+        Shape (n,).
+    declared : tuple
+        Readers of the tags, and sentinels.
+    """
+    readers, sentinels = declared
+    values = numbers.copy()
+    rows, texts = texts_of_rows
     index, words = (rows, []) if texts is None else distinct(texts)
     found = _Rejected()
     for tag, reader in enumerate(readers):
@@ -87,7 +113,7 @@ def decide_long(
         values[0, own] = part
         found.add(tag, (own[decided[0]], *decided[1:]))
     values[0, tag_of_row < 0] = np.nan
-    return found.cells(values, np.arange(len(names)), tag_of_row), unknown
+    return found.cells(values, np.arange(len(readers)), tag_of_row)
 
 
 _Decided = tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.int64], list[str]]

@@ -60,6 +60,9 @@ def _is_footer(text: str, dialect: Dialect) -> bool:
         return False
     fields = split_fields(text, dialect.delimiter)
     stamp = fields[dialect.stamp[0]].strip() if dialect.stamp[0] < len(fields) else ""
+    others = [fields[place] for place in dialect.pair_stamps[1:] if place < len(fields)]
+    if any(len(re.findall(r"\d+", text)) > 1 for text in others):
+        return False
     numbers = re.findall(r"\d+", stamp)
     has_letters = re.search(r"[^\W\d_]", stamp) is not None
     return bool(stamp) and "\0" not in stamp and (not numbers or (has_letters and len(numbers) < 2))

@@ -20,11 +20,12 @@ from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, rea
 from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
+from auditor.log_reading.quality import reject_by_quality
 from auditor.log_reading.recognition import RecognisedFile
 from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
 from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
 from auditor.records.findings import Finding, FindingCode
-from auditor.records.plant import Export, Tag
+from auditor.records.plant import Export, LongLayout, Tag
 from auditor.records.samples import ReadingNote
 
 _NO_TAG = -1
@@ -159,21 +160,31 @@ class FileReader:
         self._see(instants_us, line, dated, cells)
         bad = np.flatnonzero(fate == Fate.BAD_STAMP)
         bad_stamps = [" ".join(column.at(row) for column in texts) for row in bad.tolist()]
-        unreadable = ~stamps.good[bad]
-        if unreadable.any():
-            first = int(np.argmax(unreadable))
-            tally.reject_line(int(line[bad[first]]), bad_stamps[first], int(unreadable.sum()))
-        tally.rejected += int((~unreadable).sum())
-        tally.data += int(dated.sum())
+        first_rows, fate_of_lines = self._fate_of_lines(columns, fate)
+        lost = first_rows[fate_of_lines == Fate.BAD_STAMP]
+        unreadable = lost[~stamps.good[lost]]
+        if unreadable.size:
+            text = " ".join(column.at(int(unreadable[0])) for column in texts)
+            tally.reject_line(int(line[unreadable[0]]), text, unreadable.size)
+        tally.rejected += lost.size - unreadable.size
+        data = int(((fate_of_lines == Fate.GOOD) | (fate_of_lines == Fate.OUTSIDE)).sum())
+        tally.data += data
         tally.outside += int((fate == Fate.OUTSIDE).sum())
-        tally.skipped += int(((fate == Fate.NO_DATA) & (columns.line < kept)).sum())
+        passed_over = first_rows[fate_of_lines == Fate.NO_DATA]
+        tally.skipped += int((columns.line[passed_over] < kept).sum())
         if closed_at is not None:
             tally.reject_line(first_line + kept, "", columns.lines - kept)
         for place in dialect.unclaimed:
-            tally.unclaimed[dialect.headings[place]] += int(dated.sum()) + bad.size
+            tally.unclaimed[dialect.headings[place]] += data + lost.size
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
         if piece.instants_us.size or piece.rejected.any():
             yield piece
+
+    def _fate_of_lines(
+        self, columns: Columns, fate: NDArray[np.int8]
+    ) -> tuple[NDArray[np.int64], NDArray[np.int8]]:
+        """First row of each line, and the fate of the line: here every row is a line."""
+        return np.arange(fate.size), fate
 
     def _decide(self, columns: Columns) -> Cells:
         sentinels = self._export.sentinels
@@ -182,7 +193,8 @@ class FileReader:
         cells, unknown = decide_long(columns, [tag.column for tag in self._tags], self._readers, sentinels)
         for name, count in unknown.items():
             self._tally.unclaimed[name] = self._tally.unclaimed.get(name, 0) + count
-        return cells
+        quality = self._export.layout.quality if isinstance(self._export.layout, LongLayout) else None
+        return cells if quality is None else reject_by_quality(cells, columns.texts[-2], quality)
 
     def _instants(
         self, stamps: Stamps, cells: Cells, line: NDArray[np.int64]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -13,13 +13,16 @@ from auditor.log_reading.cells import read_number
 from auditor.log_reading.clocks import Clock, clock_of
 from auditor.log_reading.dialect import Dialect, find_dialect, heading_key, split_fields
 from auditor.log_reading.encoding import Encoding
+from auditor.log_reading.file_per_tag import name_in_file, tags_named
 from auditor.log_reading.listing import Claim
+from auditor.log_reading.pairs_layout import line_by_line
 from auditor.log_reading.samples import Sample, Sampled, line_at, take_samples
 from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words, style_of
 from auditor.log_reading.table import Columns, Learnt, Shape, as_texts, distinct, read_columns
-from auditor.records.plant import DateOrder, Export, Tag
+from auditor.records.plant import DateOrder, Export, FilePerTag, Tag
 
 HEAD_LINES = 400
+_HOUR_US = 3_600_000_000
 _ORDERS: tuple[DateOrder, ...] = (
     "year first",
     "day first",
@@ -66,6 +69,8 @@ class Look:
     """A stamp can be read with the declared order only."""
     decimal_contradiction: Contradiction | None
     decimal_proven: bool
+    point: str = ""
+    """With one file per tag: the name of its tag."""
 
     @property
     def has_stamps(self) -> bool:
@@ -73,11 +78,29 @@ class Look:
         return self.first_us <= self.last_us
 
 
+@dataclass(frozen=True)
+class OtherTag:
+    """With one file per tag: a file that holds no tag of the plant file."""
+
+    name: str | None
+    """None where the file does not say it."""
+    pattern: str
+    """Where the name was looked for."""
+
+
 def row_shape(dialect: Dialect, export: Export, numbers: Sequence[int]) -> Shape:
     """Say what to cut out of the lines of a file."""
-    texts = dialect.stamp if dialect.tag_column is None else (*dialect.stamp, dialect.tag_column)
+    quality = () if dialect.quality_column is None else (dialect.quality_column,)
+    texts = dialect.stamp if dialect.tag_column is None else (*dialect.stamp, *quality, dialect.tag_column)
+    texts = dialect.pair_stamps or texts
     return Shape(
-        dialect.delimiter, export.decimal, dialect.fields, len(dialect.headings), texts, tuple(numbers)
+        dialect.delimiter,
+        export.decimal,
+        dialect.fields,
+        len(dialect.headings),
+        texts,
+        tuple(numbers),
+        bool(dialect.pair_stamps),
     )
 
 
@@ -106,16 +129,23 @@ def to_instants(
     return utc_us, second_us, skipped
 
 
-def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | tuple[str, ...]:
+def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | OtherTag | tuple[str, ...]:
     """Look into a file.
 
     Returns
     -------
-    Look or tuple of str
+    Look or OtherTag or tuple of str
         The fields of its first lines where no line names any declared heading.
     """
     sampled = take_samples(claim.stored, export.encoding)
     head = sampled.samples[0].lines(HEAD_LINES)
+    point, layout = "", export.layout
+    if isinstance(layout, FilePerTag):
+        name = name_in_file(layout, claim.stored.path, head)
+        tags = tags_named(name, tags) if name else {}
+        if not name or not tags:
+            return OtherTag(name, layout.file_name or layout.preamble or "")
+        point = name
     dialect = find_dialect(head, export, tags)
     if dialect is None:
         return _all_fields(head)
@@ -140,6 +170,7 @@ def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | tup
         dates_proven=seen.proven,
         decimal_contradiction=against,
         decimal_proven=proof,
+        point=point,
     )
 
 
@@ -150,6 +181,9 @@ class _Seen:
         self._claim, self._export, self._dialect, self._encoding = claim, export, dialect, sampled.encoding
         self._shape = row_shape(dialect, export, ())
         self._clock = clock_of(export.clock)
+        # Pairs of a large file need not keep step on a line: reading waits longer for those that lag.
+        is_jittery = bool(dialect.pair_stamps) and not sampled.is_whole
+        self._tolerance_us = _HOUR_US if is_jittery else 0
         self._before_us: int | None = None
         self.first_us, self.last_us = np.iinfo(np.int64).max, np.iinfo(np.int64).min
         self.falls, self.rises = 0, 0
@@ -170,7 +204,10 @@ class _Seen:
         texts = [as_texts(column) for column in columns.texts]
         if self._dialect.is_long:
             self.names |= dict.fromkeys(heading_key(name) for name in distinct(columns.texts[-1])[1])
-            texts = texts[:-1]
+            texts = texts[: len(self._dialect.stamp)]
+        if self._dialect.pair_stamps:
+            columns = replace(columns, line=np.repeat(columns.line, len(texts)))
+            texts = [line_by_line(texts)]
         stamps = read_stamps(texts, style_of(self._export))
         self._add_stamps(stamps, texts)
         bad = np.flatnonzero(~stamps.good & (texts[0].ends > texts[0].starts))
@@ -200,7 +237,7 @@ class _Seen:
         if self._before_us is not None:
             early = np.concatenate([[self._before_us], early])
             late = np.concatenate([[self._before_us], late])
-        self.falls += int((late[1:] < early[:-1]).sum())
+        self.falls += int((late[1:] < early[:-1] - self._tolerance_us).sum())
         self.rises += int((early[1:] > late[:-1]).sum())
         self._before_us = int(late[-1])
 

@@ -38,8 +38,12 @@ class Tally:
     skipped_hour: int = 0
     skipped_hour_line: int = 0
     outside: int = 0
+    refused: int = 0
+    """Rejected lines whose text or fields are at fault."""
     first_rejected: tuple[int, str] | None = None
     unclaimed: dict[str, int] = field(default_factory=dict)
+    pairs: dict[str, int] = field(default_factory=dict)
+    """Pairs of columns: cells of each bound pair."""
     torn: int = 0
     footer: str = ""
     strays: int = 0
@@ -49,6 +53,7 @@ class Tally:
     def reject_line(self, line: int, text: str, count: int = 1) -> None:
         """Count a line that gave no row, and keep the first."""
         self.rejected += count
+        self.refused += count
         if self.first_rejected is None or line < self.first_rejected[0]:
             self.first_rejected = (line, text[:200])
 
@@ -80,6 +85,9 @@ class Tally:
             evidence.append(
                 f"{self.repeated} rows of a repeated hour: both passes told apart by the order of lines"
             )
+        if self.pairs:
+            counts = ", ".join(f"{name} {count}" for name, count in self.pairs.items())
+            evidence.append(f"cells of each pair of columns: {counts}")
         if self.outside:
             evidence.append(f"{self.outside} rows lie outside the stretch that was asked for")
         if self.strays:
@@ -96,7 +104,7 @@ class Tally:
             sha256=sha256,
             encoding=file.encoding.shown,
             delimiter=dialect.delimiter,
-            layout="long" if dialect.is_long else "wide",
+            layout="one file per tag" if file.point else dialect.layout,
             heading_line=dialect.heading_line,
             unit_line=dialect.unit_line,
             columns=dialect.headings,
@@ -117,8 +125,7 @@ class Tally:
     def _own_findings(self, export: str) -> list[Finding]:
         path = self.file.path
         found = []
-        others = self.rejected - self.dropped - self.skipped_hour - self.torn
-        if others and self.first_rejected is not None:
+        if self.refused and self.first_rejected is not None:
             line, text = self.first_rejected
             found.append(
                 Finding(
@@ -126,7 +133,7 @@ class Tally:
                     export=export,
                     file=path,
                     line=line,
-                    numbers={"count": others, "lines": self.lines},
+                    numbers={"count": self.refused, "lines": self.lines},
                     words={"first": text},
                 )
             )

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from auditor.log_reading.file_reading import FileReader
 from auditor.log_reading.merge import ALWAYS, NEVER, Source, merge
 from auditor.log_reading.notes import unread_note, with_late_rows
+from auditor.log_reading.pairs_reading import PairsReader
 from auditor.log_reading.pieces import Piece
 from auditor.log_reading.recognition import RecognisedFile, Recognition
 from auditor.records.plant import Export
@@ -55,7 +56,8 @@ def _source(
     file: RecognisedFile, recognition: Recognition, export: Export, window_us: tuple[int, int]
 ) -> Source:
     def read() -> Iterator[Piece | ReadingNote]:
-        return FileReader(file, export, recognition.tags, window_us).read()
+        reader = PairsReader if file.dialect.pair_stamps else FileReader
+        return reader(file, export, recognition.tags, window_us).read()
 
     margin_us = 0 if file.is_whole else _SLACK_US
     slack_us = margin_us if file.is_ordered else NEVER

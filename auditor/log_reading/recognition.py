@@ -7,13 +7,20 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key, unit_faults
+from auditor.log_reading.dialect import (
+    Dialect,
+    duplicate_headings,
+    heading_key,
+    long_headings,
+    unit_faults,
+)
 from auditor.log_reading.encoding import Encoding
+from auditor.log_reading.file_per_tag import pattern_key
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
-from auditor.log_reading.look import Contradiction, Look, look_at
+from auditor.log_reading.look import Contradiction, Look, OtherTag, look_at
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.findings import Finding, FindingCode
-from auditor.records.plant import Export, Tag
+from auditor.records.plant import Export, FilePerTag, LongLayout, Tag
 
 _FOLDER_OF_MANY = 3
 """So many unclaimed files of one folder are told as one."""
@@ -34,6 +41,8 @@ class RecognisedFile:
     is_descending: bool
     stamp_format: str
     evidence: tuple[str, ...]
+    point: str = ""
+    """With one file per tag: the name of its tag."""
 
     @property
     def path(self) -> str:
@@ -147,6 +156,8 @@ class _Pool:
         self.unopened: list[UnopenedFile] = []
         self.fields: list[str] = []
         """Fields of files without a heading row: where a misspelt heading may stand."""
+        self.points: dict[str, None] = {}
+        """With one file per tag: names that the files gave."""
         self._unreadable: list[Finding] = []
 
     def add(self, claim: Claim) -> None:
@@ -157,9 +168,21 @@ class _Pool:
             return
         if isinstance(look, Look):
             self.looks.append(look)
+            self.points[look.point] = None
+        elif isinstance(look, OtherTag):
+            self._pass_over(claim, look)
         else:
             self.fields += [field for field in look if field.isprintable()]
             self._refuse(claim, "no heading row")
+
+    def _pass_over(self, claim: Claim, other: OtherTag) -> None:
+        """Set aside a file of another tag, or one that does not say which tag it holds."""
+        if other.name is None:
+            self._refuse(claim, f'nothing in it fits "{other.pattern}", which would name its tag')
+            return
+        self.points[other.name] = None
+        reason = f'it holds "{other.name}", which no tag of the plant file binds'
+        self.unopened.append(UnopenedFile(claim.stored, claim.export, claim.pattern, reason))
 
     def _refuse(self, claim: Claim, reason: str) -> None:
         self.unopened.append(UnopenedFile(claim.stored, claim.export, claim.pattern, reason))
@@ -167,7 +190,7 @@ class _Pool:
 
     def faults(self) -> list[Fault]:
         """Everything that contradicts the plant file."""
-        if not self.looks and not self.fields:
+        if not self.looks and not self.fields and not self.points:
             return []
         faults = self._missing_headings()
         for look in self.looks:
@@ -181,7 +204,8 @@ class _Pool:
 
     def findings(self) -> list[Finding]:
         """Return what is odd, but no fault."""
-        unclaimed: dict[str, None] = {}
+        bound_points = {look.point for look in self.looks}
+        unclaimed = dict.fromkeys(point for point in self.points if point not in bound_points)
         for look in self.looks:
             if look.dialect.is_long:
                 bound = {heading_key(tag.column) for tag in self.tags.values()}
@@ -207,7 +231,7 @@ class _Pool:
     def _file(self, look: Look) -> RecognisedFile:
         missing = (
             []
-            if look.dialect.is_long
+            if look.dialect.is_long or look.point
             else [tag for tag in self.export.tags if tag not in look.dialect.columns]
         )
         evidence = [f"{look.encoding.shown}: {look.encoding.evidence}", *look.dialect.evidence]
@@ -221,6 +245,11 @@ class _Pool:
         if look.decimal_proven:
             mark = "comma" if self.export.decimal == "," else "point"
             evidence.append(f"its numbers have a decimal {mark}, as declared")
+        if look.point:
+            key = pattern_key(self.export.layout) if isinstance(self.export.layout, FilePerTag) else ""
+            evidence.append(f'it holds the tag "{look.point}" (found by {key})')
+        if look.dialect.pair_stamps:
+            evidence.append(f"{len(look.dialect.pair_stamps)} pairs of columns, a stamp left of each value")
         if missing:
             evidence.append(f"it has no column for {', '.join(missing)}")
         if not look.is_ordered:
@@ -238,6 +267,7 @@ class _Pool:
             is_descending=look.is_descending,
             stamp_format=look.stamp_format,
             evidence=tuple(evidence),
+            point=look.point,
         )
 
     def _missing_headings(self) -> list[Fault]:
@@ -247,9 +277,12 @@ class _Pool:
         )
         names, where = headings, f"exports.{export.name}"
         wanted = [(f"exports.{export.name}.stamp_columns", name, 0) for name in export.stamp_columns]
-        if export.layout is not None:
-            keys = ("stamp", "tag", "value")
-            wanted = [(f"exports.{export.name}.layout.{key}", getattr(export.layout, key), 0) for key in keys]
+        if isinstance(export.layout, LongLayout):
+            named = long_headings(export.layout)
+            wanted = [(f"{where}.layout.{key}", name, 0) for key, name in named.items()]
+        elif isinstance(export.layout, FilePerTag):
+            if self.looks or self.fields:
+                wanted.append((f"{where}.layout.value", export.layout.value, 0))
         else:
             wanted += [
                 (f"{where}.tags.{name}.column", tag.column, tag.line) for name, tag in self.tags.items()
@@ -259,8 +292,10 @@ class _Pool:
             for key, name, line in wanted
             if heading_key(name) not in headings
         ]
-        if export.layout is not None and self.looks and all(look.is_whole for look in self.looks):
+        has_points = isinstance(export.layout, LongLayout) and all(look.is_whole for look in self.looks)
+        if (has_points and self.looks) or isinstance(export.layout, FilePerTag):
             points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
+            points += self.points
             faults += [
                 _no_heading((tag.line, f"{where}.tags.{name}.column"), tag.column, points, self)
                 for name, tag in self.tags.items()
@@ -292,7 +327,7 @@ class _Pool:
                     f"logs/{bad.claim.stored.path}:{line}, {key}.date_order",
                     f'no stamp of this export can be read; the first is "{text}"',
                     f"declare the order of the date ({key}.date_order) and, where the stamp is not the first"
-                    f" column, {key}.stamp_columns; days, months and hours are read as digits only",
+                    f" column, {key}.stamp; names of months that are not English need {key}.month_names",
                 )
             )
         return faults

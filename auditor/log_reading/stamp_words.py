@@ -8,16 +8,14 @@ from datetime import UTC, datetime
 from functools import lru_cache
 from zoneinfo import ZoneInfo
 
-_ENGLISH = (
-    "January February March April May June July August September October November December".split()
-)
+_ENGLISH = "January February March April May June July August September October November December".split()
 """Known without a declaration; their first three letters too (the names of RFC 5322, section 3.3)."""
 _YEARS = (1990, 2040)
 
 
 @lru_cache(maxsize=32)
 def months_by_name(declared: Sequence[str]) -> dict[str, int]:
-    """Number of the month by its name in small letters.
+    """Give the number of each month by its name in small letters.
 
     Declared names stand alone: a word that is the name of one month in one language and of another
     one elsewhere is never guessed at.

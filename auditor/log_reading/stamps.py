@@ -53,9 +53,7 @@ _NAMED_DATES = {
     "month first": f"{_NAME}{_LOOSE}{_DAY}{_LOOSE}{_YEAR}",
 }
 _HALF = r"(?: ?(?P<half>[AaPp])\.?[Mm]\.?)?"
-_ZONE = (
-    r"(?: ?(?P<z>[Zz]|UTC|GMT)| ?(?P<sign>[+-])(?P<zh>00):?(?P<zm>00)?| \(?(?P<zone>[A-Za-z]{2,5})\)?)?"
-)
+_ZONE = r"(?: ?(?P<z>[Zz]|UTC|GMT)| ?(?P<sign>[+-])(?P<zh>00):?(?P<zm>00)?| \(?(?P<zone>[A-Za-z]{2,5})\)?)?"
 _BETWEEN = r"(?:[Tt_]|[ ,]+|-| - )"
 _EPOCH = re.compile(r"(?P<units>0{1,14})(?:[.,](?P<f>0+))?")
 _SERIAL = re.compile(r"(?P<units>0{5})(?:[.,](?P<f>0+))?")
@@ -201,7 +199,7 @@ class _Plan:
 
 @lru_cache(maxsize=1024)
 def _plan(shape: str, style: StampStyle, part: Part) -> _Plan | None:
-    """Find the places of year, month... in a shape (a stamp whose digits are all ``0``, one letter a byte)."""
+    """Find the places of year, month... in a shape (a stamp with ``0`` for every digit)."""
     found = _match(shape, style.order, part)
     if found is None:
         return None
@@ -314,57 +312,70 @@ def _read_length(
 def _compute(
     digits: NDArray[np.uint8], plan: _Plan, order: DateOrder
 ) -> tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.bool_]]:
+    """Wall time, offset from UTC and whether there is such a time, of stamps of one shape."""
     n = digits.shape[0]
-
-    def number(key: str) -> NDArray[np.int64]:
-        start, end = plan.spans.get(key, (0, 0))
-        total = np.zeros(n, np.int64)
-        for place in range(start, min(end, start + 18)):
-            total = total * 10 + digits[:, place]
-        return total
-
-    def fraction_us() -> NDArray[np.int64]:
-        start, end = plan.spans.get("f", (0, 0))
-        total = np.zeros(n, np.int64)
-        for place in range(start, start + 6):
-            total = total * 10 + (digits[:, place] if place < end else 0)
-        return total
-
-    if order == "spreadsheet days" and "units" in plan.spans:
-        start, end = plan.spans.get("f", (0, 0))
-        places = min(end, start + 15) - start
-        part = np.zeros(n, np.int64)
-        for place in range(start, start + places):
-            part = part * 10 + digits[:, place]
-        steps = np.rint(part / 10.0**places * (DAY_US // _SERIAL_STEP_US)).astype(np.int64)
-        local = (number("units") + _SERIAL_START_DAYS) * DAY_US + steps * _SERIAL_STEP_US
-        return local, np.full(n, NO_OFFSET), (local >= _FIRST_US) & (local < _LAST_US)
-    if order.startswith("epoch"):
-        scale = 1_000_000 if order == "epoch seconds" else 1_000
-        local = number("units") * scale + fraction_us() * scale // 1_000_000
-        return local, np.zeros(n, np.int64), (local >= _FIRST_US) & (local < _LAST_US)
-    hour, minute, second, fraction = number("h"), number("m"), number("s"), fraction_us()
-    good = (minute < 60) & (second < 60) & ((hour < 24) | ((hour == 24) & (minute + second + fraction == 0)))
-    if plan.afternoon is not None:
-        # 12 AM is midnight and 12 PM noon, as in everyday use.
-        good = good & (hour >= 1) & (hour <= 12)
-        hour = hour % 12 + (12 if plan.afternoon else 0)
-    local = hour * _SPANS_US["h"] + minute * _SPANS_US["m"] + second * _SPANS_US["s"] + fraction
+    if "units" in plan.spans:
+        is_serial = order == "spreadsheet days"
+        local = _serial_us(digits, plan) if is_serial else _epoch_us(digits, plan, order)
+        offset = np.full(n, NO_OFFSET) if is_serial else np.zeros(n, np.int64)
+        return local, offset, (local >= _FIRST_US) & (local < _LAST_US)
+    local, good = _time_of_day_us(digits, plan)
     if "Y" in plan.spans:
-        year, day = number("Y"), number("D")
-        month = number("M") if plan.month is None else np.full(n, plan.month)
+        year, day = _number(digits, plan, "Y"), _number(digits, plan, "D")
+        month = _number(digits, plan, "M") if plan.month is None else np.full(n, plan.month)
         if plan.spans["Y"][1] - plan.spans["Y"][0] == 2:
             year = year + np.where(year < _PIVOT, 2000, 1900)
         good &= _is_date(year, month, day)
         local = local + _days(year, month, day) * DAY_US
-    offset = np.full(n, NO_OFFSET)
+    if not plan.is_zoned:
+        return local, np.full(n, NO_OFFSET), good
     if plan.zone_us is not None:
-        offset = np.full(n, plan.zone_us)
-    elif plan.is_zoned:
-        zone_hour, zone_minute = number("zh"), number("zm")
-        offset = plan.sign * (zone_hour * _SPANS_US["h"] + zone_minute * _SPANS_US["m"])
-        good &= (zone_hour < 15) & (zone_minute < 60)
-    return local, offset, good
+        return local, np.full(n, plan.zone_us), good
+    hour, minute = _number(digits, plan, "zh"), _number(digits, plan, "zm")
+    good &= (hour < 15) & (minute < 60)
+    return local, plan.sign * (hour * _SPANS_US["h"] + minute * _SPANS_US["m"]), good
+
+
+def _number(digits: NDArray[np.uint8], plan: _Plan, key: str) -> NDArray[np.int64]:
+    start, end = plan.spans.get(key, (0, 0))
+    total = np.zeros(digits.shape[0], np.int64)
+    for place in range(start, min(end, start + 18)):
+        total = total * 10 + digits[:, place]
+    return total
+
+
+def _fraction_us(digits: NDArray[np.uint8], plan: _Plan) -> NDArray[np.int64]:
+    start, end = plan.spans.get("f", (0, 0))
+    total = np.zeros(digits.shape[0], np.int64)
+    for place in range(start, start + 6):
+        total = total * 10 + (digits[:, place] if place < end else 0)
+    return total
+
+
+def _epoch_us(digits: NDArray[np.uint8], plan: _Plan, order: DateOrder) -> NDArray[np.int64]:
+    scale = 1_000_000 if order == "epoch seconds" else 1_000
+    return _number(digits, plan, "units") * scale + _fraction_us(digits, plan) * scale // 1_000_000
+
+
+def _serial_us(digits: NDArray[np.uint8], plan: _Plan) -> NDArray[np.int64]:
+    start, end = plan.spans.get("f", (0, 0))
+    share = np.zeros(digits.shape[0])
+    for place in reversed(range(start, min(end, start + 15))):
+        share = (share + digits[:, place]) / 10.0
+    steps = np.rint(share * (DAY_US // _SERIAL_STEP_US)).astype(np.int64)
+    return (_number(digits, plan, "units") + _SERIAL_START_DAYS) * DAY_US + steps * _SERIAL_STEP_US
+
+
+def _time_of_day_us(digits: NDArray[np.uint8], plan: _Plan) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    hour, minute, second = (_number(digits, plan, key) for key in "hms")
+    fraction = _fraction_us(digits, plan)
+    good = (minute < 60) & (second < 60) & ((hour < 24) | ((hour == 24) & (minute + second + fraction == 0)))
+    if plan.afternoon is not None:
+        # 12 AM is midnight and 12 PM noon: common practice.
+        good &= (hour >= 1) & (hour <= 12)
+        hour = hour % 12 + (12 if plan.afternoon else 0)
+    local = hour * _SPANS_US["h"] + minute * _SPANS_US["m"] + second * _SPANS_US["s"] + fraction
+    return local, good
 
 
 def _is_date(year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64]) -> NDArray[np.bool_]:

@@ -42,6 +42,8 @@ class Shape:
     """Columns wanted as text."""
     numbers: tuple[int, ...]
     """Columns wanted as numbers."""
+    is_pairs: bool = False
+    """Lines may end behind any whole pair of columns."""
 
 
 @dataclass(frozen=True)
@@ -317,12 +319,16 @@ def _with_sound_quotes(data: bytes, delimiter: str) -> tuple[bytes, bool]:
 
 
 def _mended(ragged: Sequence[Ragged], shape: Shape) -> list[tuple[int, bytes]]:
-    """Lines that differ from the others by idle separators at their end only, made alike."""
+    """Lines that differ from the others by idle separators, or pairs without end, made alike."""
     mended = []
     for bad in ragged:
         fields = _cut(bad.text, shape.delimiter)
         surplus = fields[shape.headings :]
-        if len(fields) >= shape.headings > 1 and not any(field.strip() for field in surplus):
+        is_short = shape.is_pairs and 1 < len(fields) < shape.headings
+        is_short &= (shape.headings - len(fields)) % 2 == 0
+        is_long = len(fields) >= shape.headings > 1 and not any(field.strip() for field in surplus)
+        if is_short or is_long:
+            fields += [""] * (shape.headings - len(fields))
             padded = fields[: shape.headings] + [""] * (shape.fields - shape.headings)
             quoted = (f'"{field}"' if shape.delimiter in field else field for field in padded)
             mended.append((bad.line, shape.delimiter.join(quoted).encode("utf-8", "replace")))

@@ -227,12 +227,12 @@ class ExportPart(Part):
         "column separator; found from the files without it", ";"
     )
     encoding: Encoding | None = optional("text encoding; found from the files without it", "cp1252")
-    layout: (
-        Annotated[LongLayoutPart | PairsLayoutPart | FilePerTagPart, Choice(layout_form)] | None
-    ) = optional(
-        "only where a file is not one column per tag with one stamp: one row per stamp, tag and value;"
-        " pairs of columns; or one file per tag",
-        {"stamp": "time", "tag": "point", "value": "reading"},
+    layout: Annotated[LongLayoutPart | PairsLayoutPart | FilePerTagPart, Choice(layout_form)] | None = (
+        optional(
+            "only where a file is not one column per tag with one stamp: one row per stamp, tag and value;"
+            " pairs of columns; or one file per tag",
+            {"stamp": "time", "tag": "point", "value": "reading"},
+        )
     )
     stamp: StampColumns | None = optional(
         "heading of the stamp, or two where date and time stand apart; the first column without it",

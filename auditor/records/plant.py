@@ -17,7 +17,7 @@ DateOrder = Literal[
     "year first", "day first", "month first", "epoch seconds", "epoch milliseconds", "spreadsheet days"
 ]
 Thousands = Literal["space", "'", ".", ","]
-"""Mark between groups of three digits; ``space`` stands for every kind of blank, no-break and thin ones too."""
+"""Mark between groups of three digits; ``space`` is every blank, no-break and thin ones too."""
 
 
 @dataclass(frozen=True)
