@@ -14,7 +14,9 @@ from auditor.log_reading.chunks import Chunk, read_chunks
 from auditor.log_reading.clocks import clock_of, second_passes
 from auditor.log_reading.decide import Cells, decide_long, decide_wide
 from auditor.log_reading.dialect import heading_key, split_fields
+from auditor.log_reading.doubts import Doubts
 from auditor.log_reading.encoding import as_ascii_like, codec_of_stream
+from auditor.log_reading.exponents import keep_exponents
 from auditor.log_reading.file_end import cut_end
 from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, reason_of
 from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
@@ -26,7 +28,7 @@ from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
 from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, LongLayout, Tag
-from auditor.records.samples import ReadingNote
+from auditor.records.samples import Disposition, ReadingNote
 
 _NO_TAG = -1
 
@@ -44,6 +46,12 @@ class FileReader:
         self._shape = row_shape(file.dialect, export, numbers)
         columns = file.dialect.columns
         self._place = [numbers.index(columns[name]) if name in columns else None for name in export.tags]
+        is_counter = [tag.between == "counter" for tag in self._tags]
+        own = {place for place, counts in zip(self._place, is_counter, strict=True) if counts}
+        own |= {0} if file.dialect.is_long and any(is_counter) else set()
+        self._counters = {place for place in own if place is not None}
+        """Number columns that hold counters."""
+        self._doubts = Doubts(file.path, export, self._tags, file.proof)
         self._clock = clock_of(export.clock)
         self._learnt = Learnt()
         self._tally = Tally(file)
@@ -131,9 +139,13 @@ class FileReader:
             )
         )
 
-    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
+    def _columns(self, data: bytes) -> Columns:
         columns = read_columns(data, self._shape, self._learnt)
         self._learnt = columns.learnt
+        return keep_exponents(columns, self._shape, self._counters)
+
+    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
+        columns = self._columns(data)
         texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
         return columns, read_stamps(texts, style_of(self._export)), texts
 
@@ -157,8 +169,11 @@ class FileReader:
         kept = columns.lines if closed_at is None else closed_at
         fate[columns.line >= kept] = Fate.NO_DATA
         dated = (fate == Fate.GOOD) | (fate == Fate.OUTSIDE)
+        self._doubts.about_numbers(cells, line, dated)
+        self._count_lost_digits(cells, line, dated)
         self._see(instants_us, line, dated, cells)
         bad = np.flatnonzero(fate == Fate.BAD_STAMP)
+        self._doubts.about_dates(stamps, texts, line, bad[~stamps.good[bad]])
         bad_stamps = [" ".join(column.at(row) for column in texts) for row in bad.tolist()]
         first_rows, fate_of_lines = self._fate_of_lines(columns, fate)
         lost = first_rows[fate_of_lines == Fate.BAD_STAMP]
@@ -179,6 +194,20 @@ class FileReader:
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
         if piece.instants_us.size or piece.rejected.any():
             yield piece
+
+    def _count_lost_digits(self, cells: Cells, line: NDArray[np.int64], dated: NDArray[np.bool_]) -> None:
+        """Note readings of counters whose exponent hides digits."""
+        for tag, reader in enumerate(self._readers):
+            if reader.counter_step is None:
+                continue
+            own = (cells.tag == tag) & (cells.disposition == Disposition.UNPARSEABLE) & dated[cells.row]
+            words = np.unique(cells.word[own])
+            short = [word for word in words.tolist() if reader.hides_digits(cells.words[word].strip())]
+            hit = np.flatnonzero(own & np.isin(cells.word, short))
+            if hit.size:
+                first = int(hit[np.argmin(line[cells.row[hit]])])
+                place = (int(line[cells.row[first]]), cells.words[cells.word[first]].strip())
+                self._tally.lose_digits(self._tags[tag].name, place, hit.size)
 
     def _fate_of_lines(
         self, columns: Columns, fate: NDArray[np.int8]

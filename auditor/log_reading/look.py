@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
-from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,6 +11,7 @@ from numpy.typing import NDArray
 from auditor.log_reading.cells import read_number
 from auditor.log_reading.clocks import Clock, clock_of
 from auditor.log_reading.dialect import Dialect, find_dialect, heading_key, split_fields
+from auditor.log_reading.doubts import Contradiction, flips, number_in_doubt
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.file_per_tag import name_in_file, tags_named
 from auditor.log_reading.listing import Claim
@@ -31,17 +31,6 @@ _ORDERS: tuple[DateOrder, ...] = (
     "epoch milliseconds",
     "spreadsheet days",
 )
-
-
-@dataclass(frozen=True)
-class Contradiction:
-    """A cell that the declaration of its export cannot read, while another one can."""
-
-    line: int
-    text: str
-    column: str
-    reads_as: str
-    """The declaration that would read it."""
 
 
 @dataclass(frozen=True)
@@ -69,6 +58,10 @@ class Look:
     """A stamp can be read with the declared order only."""
     decimal_contradiction: Contradiction | None
     decimal_proven: bool
+    grouped: Contradiction | None
+    """A number whose digits are grouped by a mark that is not declared."""
+    date_flips: int
+    """Stamps that can only be read with day and month the other way round."""
     point: str = ""
     """With one file per tag: the name of its tag."""
 
@@ -152,7 +145,7 @@ def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | Oth
     seen = _Seen(claim, export, dialect, sampled)
     for place, sample in enumerate(sampled.samples):
         seen.add(sample, is_head=place == 0)
-    proof, against = _decimal_proof(sampled.samples[0], dialect, export)
+    proof, against, grouped = _decimal_proof(sampled.samples[0], dialect, export)
     return Look(
         claim=claim,
         encoding=sampled.encoding,
@@ -170,6 +163,8 @@ def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | Oth
         dates_proven=seen.proven,
         decimal_contradiction=against,
         decimal_proven=proof,
+        grouped=grouped,
+        date_flips=seen.flips,
         point=point,
     )
 
@@ -192,6 +187,8 @@ class _Seen:
         self.bad_stamp: tuple[int, str] | None = None
         self.against: Contradiction | None = None
         self.proven = False
+        self.flips = 0
+        """Stamps that can be read with day and month the other way round only."""
 
     def add(self, sample: Sample, is_head: bool) -> None:
         data, skipped = sample.data, 0
@@ -211,6 +208,7 @@ class _Seen:
         stamps = read_stamps(texts, style_of(self._export))
         self._add_stamps(stamps, texts)
         bad = np.flatnonzero(~stamps.good & (texts[0].ends > texts[0].starts))
+        self.flips += flips(bad, texts, self._export).size
         if bad.size and (self.bad_stamp is None or self.against is None):
             self._add_bad(bad, texts, (sample, columns, skipped, is_head))
         if not self.proven and self._export.date_order in _ORDERS[:3]:
@@ -275,28 +273,45 @@ def without_lines(data: bytes, count: int) -> bytes:
     return data[place:]
 
 
-def _decimal_proof(sample: Sample, dialect: Dialect, export: Export) -> tuple[bool, Contradiction | None]:
-    """Whether fractions prove the declared decimal mark, and the first number with the other mark."""
+def _decimal_proof(
+    sample: Sample, dialect: Dialect, export: Export
+) -> tuple[bool, Contradiction | None, Contradiction | None]:
+    """Whether fractions prove the declared decimal mark; the first number that speaks against it.
+
+    Third, the first number whose digits are grouped by a mark that is not declared.
+    """
     data = without_lines(sample.data[: 1 << 16], dialect.first_data_line - 1)
     data = data[: data.rfind(b"\n") + 1]
     numbers = number_columns(dialect)
     if not data or not numbers:
-        return False, None
+        return False, None, None
     columns = read_columns(data, row_shape(dialect, export, numbers), Learnt())
     finite = columns.values[np.isfinite(columns.values)]
     is_proven = bool((finite != np.floor(finite)).any())
-    other: Literal[".", ","] = "," if export.decimal == "." else "."
-    against: Contradiction | None = None
+    found: dict[str, Contradiction] = {}
+    dated = _dated(columns, dialect, export)
     for place, (rows, texts) in zip(numbers, columns.words, strict=True):
         index, words = (rows, []) if texts is None else distinct(texts)
         for number, word in enumerate(words):
-            value = read_number(word.strip(), export.decimal)
-            if value is not None:
-                is_proven |= not value.is_integer()
-            elif against is None and read_number(word.strip(), other) is not None:
-                line = dialect.first_data_line + int(columns.line[rows[np.argmax(index == number)]])
-                against = Contradiction(line, word.strip(), dialect.headings[place], other)
-    return is_proven, against
+            value = read_number(word.strip(), export.decimal, export.thousands)
+            is_proven |= value is not None and not value.is_integer()
+            doubt = number_in_doubt(word.strip(), export, is_proven=False)
+            own = rows[(index == number) & dated[rows]] if value is None and doubt is not None else rows[:0]
+            if doubt is not None and own.size:
+                line = dialect.first_data_line + int(columns.line[own[0]])
+                against = Contradiction(line, word.strip(), dialect.headings[place], doubt[1])
+                found.setdefault(doubt[0], against)
+    return is_proven, found.get("decimal"), found.get("grouped")
+
+
+def _dated(columns: Columns, dialect: Dialect, export: Export) -> NDArray[np.bool_]:
+    """Rows with a stamp: a total below the data is none of them."""
+    texts = [as_texts(column) for column in columns.texts]
+    if dialect.pair_stamps:
+        good = [read_stamps([column], style_of(export)).good for column in texts]
+        any_good: NDArray[np.bool_] = np.any(good, axis=0)
+        return any_good
+    return read_stamps(texts[: len(dialect.stamp)], style_of(export)).good
 
 
 def _all_fields(head: Sequence[str]) -> tuple[str, ...]:

@@ -44,6 +44,8 @@ class Tally:
     unclaimed: dict[str, int] = field(default_factory=dict)
     pairs: dict[str, int] = field(default_factory=dict)
     """Pairs of columns: cells of each bound pair."""
+    lost_digits: dict[str, tuple[int, int, str]] = field(default_factory=dict)
+    """Counters: how many readings hide digits in an exponent, line and text of the first."""
     torn: int = 0
     footer: str = ""
     strays: int = 0
@@ -56,6 +58,11 @@ class Tally:
         self.refused += count
         if self.first_rejected is None or line < self.first_rejected[0]:
             self.first_rejected = (line, text[:200])
+
+    def lose_digits(self, tag: str, place: tuple[int, str], count: int) -> None:
+        """Count readings of a counter that hide digits in an exponent, and keep the first."""
+        before, line, text = self.lost_digits.get(tag, (0, *place))
+        self.lost_digits[tag] = (before + count, line, text)
 
     def see(
         self, instants_us: NDArray[np.int64], line: NDArray[np.int64], before: tuple[int, int] | None
@@ -122,6 +129,21 @@ class Tally:
             findings=tuple(self.findings + self._own_findings(export)),
         )
 
+    def _lost_digits(self, export: str) -> list[Finding]:
+        return [
+            Finding(
+                FindingCode.LOST_DIGITS,
+                export=export,
+                file=self.file.path,
+                line=line,
+                tag=tag,
+                numbers={"count": count},
+                words={"first": text},
+                suspects=(tag,),
+            )
+            for tag, (count, line, text) in self.lost_digits.items()
+        ]
+
     def _own_findings(self, export: str) -> list[Finding]:
         path = self.file.path
         found = []
@@ -137,6 +159,7 @@ class Tally:
                     words={"first": text},
                 )
             )
+        found += self._lost_digits(export)
         if self.dropped:
             found.append(
                 Finding(

@@ -10,7 +10,7 @@ import pyarrow as pa
 from numpy.typing import NDArray
 
 from auditor.log_reading.stamps import Texts
-from auditor.log_reading.table import Columns
+from auditor.log_reading.table import Columns, take
 
 NO_PAIR = -1
 """Stands for the tag of a line on which no bound pair has anything."""
@@ -95,15 +95,10 @@ def _words(
         some = np.flatnonzero(is_there[cells])
         if some.size:
             rows.append(new_place[cells[some]])
-            parts.append(words if some.size == cells.size else words.take(_indices(some)))
+            parts.append(words if some.size == cells.size else take(words, some))
     if not rows:
         return np.zeros(0, np.int64), None
     return np.concatenate(rows), pa.concat_arrays(parts)
-
-
-def _indices(rows: NDArray[np.int64]) -> pa.Array:
-    # pa.array() would import pandas, a third of a second.
-    return pa.Array.from_buffers(pa.int64(), rows.size, [None, pa.py_buffer(np.ascontiguousarray(rows))])
 
 
 def _is_blank(words: pa.Array) -> NDArray[np.bool_]:

@@ -12,7 +12,7 @@ from auditor.log_reading.file_reading import FileReader
 from auditor.log_reading.pairs_layout import NO_PAIR, Unfolded, unfold
 from auditor.log_reading.pieces import Fate
 from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
-from auditor.log_reading.table import Columns, as_texts, read_columns
+from auditor.log_reading.table import Columns, as_texts
 
 
 class PairsReader(FileReader):
@@ -25,8 +25,7 @@ class PairsReader(FileReader):
     _unfolded: Unfolded
 
     def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
-        columns = read_columns(data, self._shape, self._learnt)
-        self._learnt = columns.learnt
+        columns = self._columns(data)
         stamps = [as_texts(column) for column in columns.texts]
         place = [column for column in self._place if column is not None]
         self._unfolded = cells = unfold(columns, stamps, place)

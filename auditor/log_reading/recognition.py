@@ -14,10 +14,11 @@ from auditor.log_reading.dialect import (
     long_headings,
     unit_faults,
 )
+from auditor.log_reading.doubts import Proof, contradicted, grouped, mixed_dates
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.file_per_tag import pattern_key
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
-from auditor.log_reading.look import Contradiction, Look, OtherTag, look_at
+from auditor.log_reading.look import Look, OtherTag, look_at
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, FilePerTag, LongLayout, Tag
@@ -41,6 +42,8 @@ class RecognisedFile:
     is_descending: bool
     stamp_format: str
     evidence: tuple[str, ...]
+    proof: Proof
+    """What the files of its export have proven together."""
     point: str = ""
     """With one file per tag: the name of its tag."""
 
@@ -268,6 +271,12 @@ class _Pool:
             stamp_format=look.stamp_format,
             evidence=tuple(evidence),
             point=look.point,
+            proof=self._proof(),
+        )
+
+    def _proof(self) -> Proof:
+        return Proof(
+            any(look.dates_proven for look in self.looks), any(look.decimal_proven for look in self.looks)
         )
 
     def _missing_headings(self) -> list[Fault]:
@@ -306,14 +315,24 @@ class _Pool:
     def _contradictions(self) -> list[Fault]:
         faults = []
         key = f"exports.{self.export.name}"
-        if not any(look.dates_proven for look in self.looks):
-            found = next(((x, x.date_contradiction) for x in self.looks if x.date_contradiction), None)
-            if found is not None:
-                faults.append(_contradicted(*found, f"{key}.date_order", self.export.date_order))
-        if not any(look.decimal_proven for look in self.looks):
-            found = next(((x, x.decimal_contradiction) for x in self.looks if x.decimal_contradiction), None)
-            if found is not None:
-                faults.append(_contradicted(*found, f"{key}.decimal", self.export.decimal))
+        proof = self._proof()
+        flipped = next((look for look in self.looks if look.date_flips > 1), None)
+        dated = next((look for look in self.looks if look.date_contradiction), None)
+        if not proof.dates and dated is not None and dated.date_contradiction is not None:
+            found = dated.date_contradiction
+            path, order = dated.claim.stored.path, self.export.date_order
+            faults.append(contradicted(path, found, f"{key}.date_order", order))
+        elif flipped is not None and flipped.date_contradiction is not None:
+            found = flipped.date_contradiction
+            faults.append(mixed_dates(flipped.claim.stored.path, found, self.export))
+        doubtful = next((look for look in self.looks if look.grouped), None)
+        pointed = next((look for look in self.looks if look.decimal_contradiction), None)
+        if doubtful is not None and doubtful.grouped is not None:
+            faults.append(grouped(doubtful.claim.stored.path, doubtful.grouped, self.export))
+        elif not proof.decimal and pointed is not None and pointed.decimal_contradiction is not None:
+            found = pointed.decimal_contradiction
+            path, mark = pointed.claim.stored.path, self.export.decimal
+            faults.append(contradicted(path, found, f"{key}.decimal", mark))
         bad = next((look for look in self.looks if look.bad_stamp is not None), None)
         if (
             not faults
@@ -342,15 +361,6 @@ def _no_heading(place: tuple[int, str], name: str, names: Sequence[str], pool: _
         f"plant.toml:{line}, {key}" if line else f"plant.toml, {key}",
         f'"{name}" is in none of the {files} files of export {pool.export.name}; {nearest}',
         "write the name exactly as it stands in the export, or correct the export's files",
-    )
-
-
-def _contradicted(look: Look, found: Contradiction, key: str, declared: str) -> Fault:
-    return Fault(
-        f"logs/{look.claim.stored.path}:{found.line}, column {found.column}",
-        f'"{found.text}" cannot be read with {key} = "{declared}", and nothing in this export needs it;'
-        f' it can be read with "{found.reads_as}"',
-        f'set {key} = "{found.reads_as}", if that is how this logger writes',
     )
 
 

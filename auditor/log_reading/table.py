@@ -127,7 +127,7 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
         line = np.delete(line, [bad.line for bad in ragged])
     texts = tuple(table.column(f"c{place}").combine_chunks() for place in shape.texts)
     values, missing = _matrix(table, shape)
-    cells = _texts_of(body, shape, line, missing)
+    cells = texts_of_rows(body, shape, line, missing)
     return Columns(body, line, texts, values, cells, tuple(ragged), lines, after)
 
 
@@ -259,7 +259,7 @@ def _nulls(piece: pa.Array) -> NDArray[np.bool_]:
     return ~is_valid.view(np.bool_)
 
 
-def _texts_of(
+def texts_of_rows(
     data: bytes, shape: Shape, line: NDArray[np.int64], missing: list[NDArray[np.int64]]
 ) -> tuple[tuple[NDArray[np.int64], pa.Array | None], ...]:
     """Read the cells without a number as text: only their rows, only their columns."""
@@ -284,14 +284,16 @@ def _texts_of(
             continue
         column = table.column(f"c{place}").combine_chunks()
         some = place_of[rows]
-        picked = column if some.size == kept.size else column.take(_indices(some))
+        picked = column if some.size == kept.size else take(column, some)
         out.append((rows, picked))
     return tuple(out)
 
 
-def _indices(rows: NDArray[np.int64]) -> pa.Array:
+def take(column: pa.Array, rows: NDArray[np.int64]) -> pa.Array:
+    """Pick some cells of a column of the parser."""
     # pa.array() would import pandas, a third of a second.
-    return pa.Array.from_buffers(pa.int64(), rows.size, [None, pa.py_buffer(np.ascontiguousarray(rows))])
+    indices = pa.Array.from_buffers(pa.int64(), rows.size, [None, pa.py_buffer(np.ascontiguousarray(rows))])
+    return column.take(indices)
 
 
 def _lines(data: bytes, wanted: NDArray[np.int64]) -> bytes:
