@@ -31,6 +31,8 @@ from auditor.records.plant import Export, LongLayout, Tag
 from auditor.records.samples import Disposition, ReadingNote
 
 _NO_TAG = -1
+_SIDE_BY_SIDE_CHUNK = 1 << 17
+"""Bytes of a chunk where as many files as there are tags are read side by side."""
 
 
 class FileReader:
@@ -67,11 +69,12 @@ class FileReader:
         """Give the rows of the file chunk by chunk, then its note."""
         stored, encoding = self._file.claim.stored, self._file.encoding
         digest = ""
+        size = _SIDE_BY_SIDE_CHUNK if self._file.point else None
         try:
             with open_stored(stored) as opened:
                 stream = _Hashing(opened) if stored.is_plain else opened
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
-                for chunk in read_chunks(text, codec_of_stream(encoding)):
+                for chunk in read_chunks(text, codec_of_stream(encoding), size):
                     yield from self._chunk(chunk)
                 if isinstance(stream, _Hashing):
                     digest = stream.sha256.hexdigest()

@@ -11,7 +11,6 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from numpy.typing import NDArray
 
-from auditor.log_reading.stamps import Texts
 from auditor.log_reading.table import as_texts, distinct, take
 from auditor.records.plant import Thousands
 from auditor.units import same_unit
@@ -23,6 +22,7 @@ _BYTES = {
     ",": ",",
 }
 """Marks between groups as bytes of UTF-8: four kinds of blank, two of apostrophe."""
+_LITERALS = {"space": (" ", "\u00a0", "\u202f", "\u2009"), "'": ("'", "\u2019"), ".": (".",), ",": (",",)}
 _LETTERS = {"space": "[ \u00a0\u202f\u2009]", "'": "['\u2019]", ".": r"\.", ",": ","}
 _MARKS: tuple[Thousands, ...] = ("space", "'", ".", ",")
 
@@ -88,30 +88,50 @@ def settle_numbers(
     """
     if style.is_plain or not len(texts):
         return rows, texts
-    plain = r"\d+" if style.thousands is None else rf"\d{{1,3}}(?:{_BYTES[style.thousands]}\d{{3}})+|\d+"
-    point = re.escape(style.decimal)
-    pattern = rf"^\s*(?P<number>[+-]?(?:(?:{plain})(?:{point}\d*)?|{point}\d+))\s*(?P<unit>[^\d\s+-].*?)?\s*$"
     encoded = texts.dictionary_encode()
-    found = pc.extract_regex(encoded.dictionary, pattern)
-    number, unit = found.field("number"), found.field("unit")
-    codes, units = distinct(unit)
-    is_own = np.array([not word or (bool(style.unit) and same_unit(word, style.unit)) for word in units])
-    taken = _filled(as_texts(number)) & is_own[codes]
-    if not taken.any():
-        return rows, texts
-    some = take(number, np.flatnonzero(taken))
-    if style.thousands is not None:
-        some = pc.replace_substring_regex(some, _BYTES[style.thousands], "")
-    if style.decimal != ".":
-        some = pc.replace_substring(some, style.decimal, ".")
-    read = pc.cast(pc.cast(some, pa.string()), pa.float64())
-    numbers = np.full(taken.size, np.nan)
-    numbers[taken] = np.frombuffer(read.buffers()[1], np.float64, len(read), read.offset * 8)
+    numbers = _numbers_of(encoded.dictionary, style)
     index = np.frombuffer(encoded.indices.buffers()[1], np.int32, len(texts), encoded.indices.offset * 4)
     is_number = np.isfinite(numbers)[index]
     values[rows[is_number]] = numbers[index[is_number]]
     left = np.flatnonzero(~is_number)
     return rows[left], take(texts, left)
+
+
+def _numbers_of(words: pa.Array, style: NumberStyle) -> NDArray[np.float64]:
+    """Read distinct texts as numbers in a style; NaN where one is none."""
+    digits = r"\d+" if style.thousands is None else rf"\d{{1,3}}(?:{_BYTES[style.thousands]}\d{{3}})+|\d+"
+    point = re.escape(style.decimal)
+    number = rf"[+-]?(?:(?:{digits})(?:{point}\d*)?|{point}\d+)"
+    out = np.full(len(words), np.nan)
+    # Most are bare numbers; to look for one without taking it apart is many times faster.
+    is_bare = _bits(pc.match_substring_regex(words, f"^{number}$"))
+    bare, rest = np.flatnonzero(is_bare), np.flatnonzero(~is_bare)
+    out[bare] = _converted(take(words, bare), style)
+    if not rest.size:
+        return out
+    found = pc.extract_regex(take(words, rest), rf"^\s*(?P<number>{number})\s*(?P<unit>[^\d\s+-].*?)?\s*$")
+    codes, units = distinct(found.field("unit"))
+    is_own = [not unit or (bool(style.unit) and same_unit(unit, style.unit)) for unit in units]
+    texts = as_texts(found.field("number"))
+    taken = np.flatnonzero((texts.ends > texts.starts) & np.array(is_own or [True])[codes])
+    out[rest[taken]] = _converted(take(found.field("number"), taken), style)
+    return out
+
+
+def _converted(numbers: pa.Array, style: NumberStyle) -> NDArray[np.float64]:
+    """Numbers of texts that are in the style."""
+    for mark in _LITERALS[style.thousands] if style.thousands is not None else ():
+        numbers = pc.replace_substring(numbers, mark, "")
+    if style.decimal != ".":
+        numbers = pc.replace_substring(numbers, style.decimal, ".")
+    read = pc.cast(pc.cast(numbers, pa.string()), pa.float64())
+    return np.frombuffer(read.buffers()[1], np.float64, len(read), read.offset * 8)
+
+
+def _bits(flags: pa.Array) -> NDArray[np.bool_]:
+    packed = np.frombuffer(flags.buffers()[1], np.uint8)
+    bits = np.unpackbits(packed, bitorder="little", count=len(flags) + flags.offset)[flags.offset :]
+    return bits.view(np.bool_)
 
 
 def is_short_of_digits(text: str, step: float) -> bool:
@@ -138,8 +158,3 @@ def is_short_of_digits(text: str, step: float) -> bool:
 
 def _pattern(mark: str, decimal: str) -> str:
     return rf"[+-]?\d{{1,3}}(?:{mark}\d{{3}})+(?:{re.escape(decimal)}\d*)?"
-
-
-def _filled(texts: Texts) -> NDArray[np.bool_]:
-    filled: NDArray[np.bool_] = texts.ends > texts.starts
-    return filled

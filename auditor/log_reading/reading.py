@@ -10,6 +10,7 @@ from auditor.log_reading.notes import unread_note, with_late_rows
 from auditor.log_reading.pairs_reading import PairsReader
 from auditor.log_reading.pieces import Piece
 from auditor.log_reading.recognition import RecognisedFile, Recognition
+from auditor.log_reading.spill import in_order
 from auditor.records.plant import Export
 from auditor.records.samples import ReadingNote, SampleBlock
 
@@ -39,8 +40,8 @@ def read_export(
 
     Notes
     -----
-    Memory is that of a few chunks, plus the stretch over which files overlap, plus the whole of a
-    file whose rows are not in order.
+    Memory is that of a few chunks, plus the stretch over which files overlap. A large file whose rows
+    are not in order is put aside day by day in the system's folder for temporary files.
     """
     export = recognition.exports[export_name]
     sources = []
@@ -59,6 +60,8 @@ def _source(
         reader = PairsReader if file.dialect.pair_stamps else FileReader
         return reader(file, export, recognition.tags, window_us).read()
 
+    if not file.is_ordered and not file.is_whole:
+        return Source(file.path, file.claim.pattern, ALWAYS, 0, lambda: in_order(read()))
     margin_us = 0 if file.is_whole else _SLACK_US
     slack_us = margin_us if file.is_ordered else NEVER
     floor_us = file.first_us - margin_us if file.has_stamps else ALWAYS

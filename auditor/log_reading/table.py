@@ -27,6 +27,8 @@ _NOT_A_NUMBER = re.compile(
 )
 _MOST_WORDS_PER_CHUNK = 24
 _MOST_WORDS = 64
+_MOST_LIKE_NUMBERS = 2
+_LIKE_A_NUMBER = re.compile(r"\s*[+-]?\d")
 
 
 @dataclass(frozen=True)
@@ -159,6 +161,7 @@ def _numbers(
     words, wordy = set(learnt.words), set(learnt.wordy)
     text_now = {place for place in shape.numbers if place in wordy}
     tries = 0
+    like_numbers = dict.fromkeys(shape.numbers, 0)
     while True:
         ragged: list[Ragged] = []
         try:
@@ -171,7 +174,9 @@ def _numbers(
             column, word = int(found[1]), found[2]
             # A padded word is reported without its blanks and would not match: its column is read
             # as text in this chunk. One with a new word in every cell is never tried again.
-            if tries > _MOST_WORDS_PER_CHUNK:
+            # Numbers written otherwise (grouped, or with their unit) differ from cell to cell.
+            like_numbers[column] += _LIKE_A_NUMBER.match(word) is not None
+            if tries > _MOST_WORDS_PER_CHUNK or like_numbers[column] > _MOST_LIKE_NUMBERS:
                 text_now.add(column)
                 wordy.add(column)
             elif word in known or not word:
