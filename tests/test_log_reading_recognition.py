@@ -119,9 +119,9 @@ def test_date_order_contradicted(tmp_path: Path) -> None:
 def test_stamps_that_nothing_reads(tmp_path: Path) -> None:
     """An export without any readable stamp is a fault that shows the first one."""
     (fault,) = faults_of(
-        tmp_path, {"a.csv": "t;a\n7/1/2026 3:00 PM;1\n"}, {"a": "a"}, date_order="month first"
+        tmp_path, {"a.csv": "t;a\n7/1/2026 at three;1\n"}, {"a": "a"}, date_order="month first"
     )
-    assert 'the first is "7/1/2026 3:00 PM"' in fault
+    assert 'the first is "7/1/2026 at three"' in fault
 
 
 def test_file_claimed_twice(tmp_path: Path) -> None:

@@ -16,7 +16,7 @@ from auditor.log_reading.dialect import heading_key, split_fields
 from auditor.log_reading.encoding import as_ascii_like, codec_of_stream, find_encoding, to_utf8
 from auditor.log_reading.listing import READ_ERRORS, StoredFile, open_stored, reason_of
 from auditor.log_reading.samples import line_feeds, split_lines
-from auditor.log_reading.stamps import DAY_US, read_stamps, texts_of
+from auditor.log_reading.stamps import DAY_US, StampStyle, read_stamps, texts_of
 from auditor.records.plant import DateOrder
 from auditor.units import UnitError, meanings, split_qualifier
 
@@ -149,13 +149,13 @@ def _read(
     rows: Sequence[Sequence[str]], stamp: tuple[int, ...], orders: Sequence[DateOrder]
 ) -> NDArray[np.bool_]:
     columns = [texts_of([row[place] if place < len(row) else "" for row in rows]) for place in stamp]
-    good = [read_stamps(columns, order).good for order in orders]
+    good = [read_stamps(columns, StampStyle(order)).good for order in orders]
     return np.asarray(np.any(good, axis=0), np.bool_)
 
 
 def _is_dates_only(rows: Sequence[Sequence[str]], place: int) -> bool:
     column = [texts_of([row[place] if place < len(row) else "" for row in rows])]
-    reads = [read_stamps(column, order) for order in CALENDAR]
+    reads = [read_stamps(column, StampStyle(order)) for order in CALENDAR]
     return all(not (read.local_us[read.good] % DAY_US).any() for read in reads)
 
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from auditor.drafting.gathering import Gathered
 from auditor.drafting.proposals import StampEvidence
 from auditor.log_reading.stamps import DAY_US as _DAY_US
-from auditor.log_reading.stamps import NO_OFFSET, Stamps, read_stamps, shape_in_words, texts_of
+from auditor.log_reading.stamps import NO_OFFSET, Stamps, StampStyle, read_stamps, shape_in_words, texts_of
 from auditor.records.plant import DateOrder
 
 _HOUR_US = 3_600_000_000
@@ -30,7 +30,7 @@ def stamp_evidence(gathered: Gathered) -> StampEvidence:
     pieces = [piece for piece in (*gathered.pieces, *gathered.heads) if piece.lines]
     texts = _joined([piece.stamps() for piece in pieces])
     columns = [texts_of(column) for column in texts]
-    reads = {order: read_stamps(columns, order) for order in pieces[0].table.orders}
+    reads = {order: read_stamps(columns, StampStyle(order)) for order in pieces[0].table.orders}
     reads = {order: read for order, read in reads.items() if read.good.any()}
     shown = [" ".join(parts).strip() for parts in zip(*texts, strict=True)]
     order, because = _order(reads, shown)
@@ -64,7 +64,7 @@ def _order(reads: dict[DateOrder, Stamps], shown: Sequence[str]) -> tuple[DateOr
     if len(reads) == 1:
         order, read = next(iter(reads.items()))
         text = shown[int(np.flatnonzero(read.good)[0])]
-        words = shape_in_words(text, order)
+        words = shape_in_words(text, StampStyle(order))
         return order, f'"{text}" can only be read so' + (f": {words}" if words else "")
     alone: dict[DateOrder, NDArray[np.int64]] = {}
     for order, read in reads.items():

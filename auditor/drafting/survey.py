@@ -21,7 +21,7 @@ from auditor.drafting.looks_like import look_at_column
 from auditor.drafting.proposals import Appearance, Draft, ExportProposal, TagProposal
 from auditor.drafting.stamp_evidence import stamp_evidence
 from auditor.log_reading.listing import every_file
-from auditor.log_reading.stamps import read_stamps, texts_of
+from auditor.log_reading.stamps import StampStyle, read_stamps, texts_of
 from auditor.records.errors import Fault, NoDataError
 
 _RESERVED = "reference"
@@ -138,7 +138,7 @@ def _left_out(columns: Mapping[str, Column], known: set[str], remarks: list[str]
             more.add(name)
             remarks.append(f'the heading "{name}" holds a character that cannot be printed: left out')
             continue
-        good = max(int(read_stamps([texts_of(filled)], order).good.sum()) for order in CALENDAR)
+        good = max(int(read_stamps([texts_of(filled)], StampStyle(order)).good.sum()) for order in CALENDAR)
         if good > 0.9 * len(filled):
             more.add(name)
             remarks.append(f'the column "{name}" holds dates or stamps too ("{filled[0]}"): left out')

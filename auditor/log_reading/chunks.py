@@ -26,16 +26,17 @@ class Chunk:
     """Bytes that had no meaning in the encoding."""
 
 
-def read_chunks(stream: IO[bytes], codec: str) -> Iterator[Chunk]:
-    """Cut a stream at line ends.
+def read_chunks(stream: IO[bytes], codec: str, size: int | None = None) -> Iterator[Chunk]:
+    """Cut a stream at line ends, by default into pieces of ``CHUNK`` bytes.
 
     Line feed, carriage return and the pair end a line; where carriage returns stand alone they are
     turned into line feeds, so that whoever reads a chunk meets line feeds or pairs only.
     """
     held: bytes | None = None
     line, rest = 1, b""
+    size = size or CHUNK
     while True:
-        block = stream.read(CHUNK)
+        block = stream.read(size)
         if not block:
             break
         data = rest + block if rest else block
@@ -46,7 +47,7 @@ def read_chunks(stream: IO[bytes], codec: str) -> Iterator[Chunk]:
             rest = data
             continue
         whole, rest = data[:end], data[end:]
-        if held is not None and len(block) < CHUNK // 4:
+        if held is not None and len(block) < size // 4:
             # The file ends here: its last chunk must be long enough to hold a whole footer.
             held += whole
             continue

@@ -6,11 +6,13 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+import pyarrow as pa
 from numpy.typing import NDArray
 
 from auditor.log_reading.cells import CellReader, shortest
 from auditor.log_reading.dialect import heading_key
-from auditor.log_reading.table import Columns, distinct
+from auditor.log_reading.numbers_text import NumberStyle, settle_numbers
+from auditor.log_reading.table import Columns, distinct, take
 from auditor.records.samples import Disposition
 
 
@@ -50,6 +52,8 @@ def decide_wide(
     for tag, (column, reader) in enumerate(zip(place, readers, strict=True)):
         if column is not None:
             rows, texts = columns.words[column]
+            if texts is not None:
+                rows, texts = settle_numbers(values[tag], rows, texts, reader.style)
             index, words = (rows, []) if texts is None else distinct(texts)
             found.add(tag, _decide(values[tag], (rows, index, words), reader, sentinels))
     present = np.array([tag for tag, column in enumerate(place) if column is not None], np.int64)
@@ -60,6 +64,8 @@ def decide_long(
     columns: Columns, names: Sequence[str], readers: Sequence[CellReader], sentinels: Sequence[float]
 ) -> tuple[Cells, dict[str, int]]:
     """Decide every cell of a long chunk: its last text column is the tag, its only number the value.
+
+    Quality codes are another matter: see :mod:`~auditor.log_reading.quality`.
 
     Returns
     -------
@@ -74,9 +80,36 @@ def decide_long(
     for name, count, tag in zip(found_names, counts, tag_of_code.tolist(), strict=True):
         if tag < 0:
             unknown[heading_key(name)] = unknown.get(heading_key(name), 0) + count
-    tag_of_row = tag_of_code[codes]
-    values = columns.values.copy()
-    rows, texts = columns.words[0]
+    cells = decide_rows(columns.values, columns.words[0], tag_of_code[codes], (readers, sentinels))
+    return cells, unknown
+
+
+def decide_rows(
+    numbers: NDArray[np.float64],
+    texts_of_rows: tuple[NDArray[np.int64], pa.Array | None],
+    tag_of_row: NDArray[np.int64],
+    declared: tuple[Sequence[CellReader], Sequence[float]],
+) -> Cells:
+    """Decide one cell per row, each of the tag that ``tag_of_row`` says (-1: of none that is bound).
+
+    Parameters
+    ----------
+    numbers : ndarray
+        Shape (1, n); NaN where the cell is no plain number.
+    texts_of_rows : tuple
+        The rows without a number, and the texts that stand there.
+    tag_of_row : ndarray
+        Shape (n,).
+    declared : tuple
+        Readers of the tags, and sentinels.
+    """
+    readers, sentinels = declared
+    values = numbers.copy()
+    rows, texts = texts_of_rows
+    if texts is not None:
+        for style in {reader.style: None for reader in readers}:
+            tags = [tag for tag, reader in enumerate(readers) if reader.style == style]
+            rows, texts = _settle_rows(values[0], (rows, texts), np.isin(tag_of_row, tags), style)
     index, words = (rows, []) if texts is None else distinct(texts)
     found = _Rejected()
     for tag, reader in enumerate(readers):
@@ -87,7 +120,25 @@ def decide_long(
         values[0, own] = part
         found.add(tag, (own[decided[0]], *decided[1:]))
     values[0, tag_of_row < 0] = np.nan
-    return found.cells(values, np.arange(len(names)), tag_of_row), unknown
+    return found.cells(values, np.arange(len(readers)), tag_of_row)
+
+
+def _settle_rows(
+    values: NDArray[np.float64],
+    texts_of_rows: tuple[NDArray[np.int64], pa.Array],
+    is_own: NDArray[np.bool_],
+    style: NumberStyle,
+) -> tuple[NDArray[np.int64], pa.Array]:
+    """Settle the numbers of the tags of one style, which share a column with those of others."""
+    rows, texts = texts_of_rows
+    if style.is_plain:
+        return rows, texts
+    own = is_own[rows]
+    if own.all():
+        return settle_numbers(values, rows, texts, style)
+    mine, others = np.flatnonzero(own), np.flatnonzero(~own)
+    left, left_texts = settle_numbers(values, rows[mine], take(texts, mine), style)
+    return np.concatenate([rows[others], left]), pa.concat_arrays([take(texts, others), left_texts])
 
 
 _Decided = tuple[NDArray[np.int64], NDArray[np.int64], NDArray[np.int64], list[str]]

@@ -10,9 +10,9 @@ from dataclasses import dataclass
 from typing import Literal
 
 from auditor.log_reading.cells import read_number
-from auditor.log_reading.stamps import read_stamps, texts_of
+from auditor.log_reading.stamps import read_stamps, style_of, texts_of
 from auditor.records.errors import Fault
-from auditor.records.plant import Export, Tag
+from auditor.records.plant import Export, FilePerTag, LongLayout, PairsLayout, Tag
 from auditor.units import UnitError, same_unit, split_qualifier
 from auditor.units.spellings import meanings
 
@@ -39,6 +39,10 @@ class Dialect:
     tag_column: int | None
     """Long: the column with the names of tags."""
     value_column: int | None
+    quality_column: int | None
+    """Long: the column that says whether the value is good, where one is declared."""
+    pair_stamps: tuple[int, ...]
+    """Pairs: for each bound column, in order of tags, the column of its own stamps."""
     known_lines: frozenset[str]
     """Preamble, heading and unit rows as they stand: where they come again, they are passed over."""
     evidence: tuple[str, ...]
@@ -49,9 +53,17 @@ class Dialect:
         return self.tag_column is not None
 
     @property
+    def layout(self) -> str:
+        """How the lines are laid out, in a word."""
+        return "long" if self.is_long else "pairs" if self.pair_stamps else "wide"
+
+    @property
     def unclaimed(self) -> tuple[int, ...]:
         """Columns that neither a tag nor the stamp binds."""
-        bound = {*self.stamp, *self.columns.values(), self.tag_column, self.value_column}
+        bound = {*self.stamp, *self.columns.values(), *self.pair_stamps}
+        bound |= {
+            place for place in (self.tag_column, self.value_column, self.quality_column) if place is not None
+        }
         return tuple(place for place, name in enumerate(self.headings) if place not in bound and name)
 
 
@@ -97,7 +109,7 @@ def find_dialect(head: Sequence[str], export: Export, tags: Mapping[str, Tag]) -
             break
         for delimiter in (export.delimiter,) if export.delimiter else _DELIMITERS:
             found = {heading_key(field) for field in split_fields(line, delimiter)} & wanted
-            if export.layout is not None and len(found) < len(wanted):
+            if isinstance(export.layout, LongLayout | FilePerTag) and len(found) < len(wanted):
                 continue
             if len(found) > best[0]:
                 best = (len(found), delimiter, number)
@@ -109,9 +121,17 @@ def find_dialect(head: Sequence[str], export: Export, tags: Mapping[str, Tag]) -
 
 def wanted_headings(export: Export, tags: Mapping[str, Tag]) -> set[str]:
     """Headings that the plant file names for an export, the stamp's left out in wide files."""
-    if export.layout is not None:
-        return {heading_key(name) for name in (export.layout.stamp, export.layout.tag, export.layout.value)}
+    if isinstance(export.layout, FilePerTag):
+        return {heading_key(export.layout.value)}
+    if isinstance(export.layout, LongLayout):
+        return {heading_key(name) for name in long_headings(export.layout).values()}
     return {heading_key(tags[name].column) for name in export.tags}
+
+
+def long_headings(layout: LongLayout) -> dict[str, str]:
+    """Headings that a long export must have, by their key of the layout."""
+    named = {"stamp": layout.stamp, "tag": layout.tag, "value": layout.value}
+    return named if layout.quality is None else {**named, "quality.column": layout.quality.column}
 
 
 def duplicate_headings(
@@ -171,13 +191,21 @@ def _bind(head: Sequence[str], row: int, delimiter: str, export: Export, tags: M
     headings = [heading_key(field) for field in split_fields(head[row], delimiter)]
     while len(headings) > 1 and not headings[-1]:
         headings.pop()
-    layout = export.layout
+    layout = export.layout if isinstance(export.layout, LongLayout) else None
     stamp_names = (layout.stamp,) if layout else export.stamp_columns
     stamp = tuple(headings.index(heading_key(name)) for name in stamp_names) or (0,)
-    columns = {}
-    if layout is None:
+    columns: dict[str, int] = {}
+    if isinstance(export.layout, FilePerTag):
+        columns = dict.fromkeys(tags, headings.index(heading_key(export.layout.value)))
+    elif layout is None:
         bound = ((name, heading_key(tags[name].column)) for name in export.tags)
         columns = {name: headings.index(key) for name, key in bound if key in headings}
+    pair_stamps: tuple[int, ...] = ()
+    if isinstance(export.layout, PairsLayout):
+        # A tag in the first column has no stamp at its left.
+        columns = {name: place for name, place in columns.items() if place > 0}
+        pair_stamps = tuple(place - 1 for place in columns.values())
+        stamp = pair_stamps[:1] or stamp
     is_stamp = _stamp_lines(head, delimiter, stamp, export)
     first = _first_data(head, row, delimiter, is_stamp, columns, export)
     unit_row = _unit_row(head, row, first, delimiter, columns, tags)
@@ -198,6 +226,10 @@ def _bind(head: Sequence[str], row: int, delimiter: str, export: Export, tags: M
         columns=columns,
         tag_column=headings.index(heading_key(layout.tag)) if layout else None,
         value_column=headings.index(heading_key(layout.value)) if layout else None,
+        quality_column=headings.index(heading_key(layout.quality.column))
+        if layout and layout.quality
+        else None,
+        pair_stamps=pair_stamps,
         known_lines=frozenset(line.strip() for line in head[:first]) - {""},
         evidence=tuple(evidence),
     )
@@ -206,7 +238,7 @@ def _bind(head: Sequence[str], row: int, delimiter: str, export: Export, tags: M
 def _stamp_lines(head: Sequence[str], delimiter: str, stamp: tuple[int, ...], export: Export) -> list[bool]:
     rows = [split_fields(line, delimiter) for line in head]
     columns = [texts_of([row[place] if place < len(row) else "" for row in rows]) for place in stamp]
-    return [bool(good) for good in read_stamps(columns, export.date_order).good]
+    return [bool(good) for good in read_stamps(columns, style_of(export)).good]
 
 
 def _first_data(

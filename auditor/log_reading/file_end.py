@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from auditor.log_reading.cells import read_number
 from auditor.log_reading.dialect import Dialect, split_fields
-from auditor.log_reading.stamps import read_stamps, texts_of
+from auditor.log_reading.stamps import read_stamps, style_of, texts_of
 from auditor.records.plant import Export
 
 _LONGEST_FOOTER = 20
@@ -60,6 +60,9 @@ def _is_footer(text: str, dialect: Dialect) -> bool:
         return False
     fields = split_fields(text, dialect.delimiter)
     stamp = fields[dialect.stamp[0]].strip() if dialect.stamp[0] < len(fields) else ""
+    others = [fields[place] for place in dialect.pair_stamps[1:] if place < len(fields)]
+    if any(len(re.findall(r"\d+", text)) > 1 for text in others):
+        return False
     numbers = re.findall(r"\d+", stamp)
     has_letters = re.search(r"[^\W\d_]", stamp) is not None
     return bool(stamp) and "\0" not in stamp and (not numbers or (has_letters and len(numbers) < 2))
@@ -70,7 +73,8 @@ def _is_complete(text: str, dialect: Dialect, export: Export, data: bytes) -> bo
     fields = [field.strip() for field in split_fields(text, dialect.delimiter)]
     if len(fields) < dialect.fields or any(fields[dialect.fields :]):
         return False
-    if not read_stamps([texts_of([fields[place]]) for place in dialect.stamp], export.date_order).good.all():
+    stamp = [texts_of([fields[place]]) for place in dialect.stamp]
+    if not read_stamps(stamp, style_of(export)).good.all():
         return False
     last = fields[dialect.fields - 1]
     if not last or last in export.status_words or read_number(last, export.decimal) is not None:

@@ -14,20 +14,25 @@ from auditor.log_reading.chunks import Chunk, read_chunks
 from auditor.log_reading.clocks import clock_of, second_passes
 from auditor.log_reading.decide import Cells, decide_long, decide_wide
 from auditor.log_reading.dialect import heading_key, split_fields
+from auditor.log_reading.doubts import Doubts
 from auditor.log_reading.encoding import as_ascii_like, codec_of_stream
+from auditor.log_reading.exponents import keep_exponents
 from auditor.log_reading.file_end import cut_end
 from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, reason_of
 from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
+from auditor.log_reading.quality import reject_by_quality
 from auditor.log_reading.recognition import RecognisedFile
-from auditor.log_reading.stamps import Stamps, Texts, read_stamps
+from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
 from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
 from auditor.records.findings import Finding, FindingCode
-from auditor.records.plant import Export, Tag
-from auditor.records.samples import ReadingNote
+from auditor.records.plant import Export, LongLayout, Tag
+from auditor.records.samples import Disposition, ReadingNote
 
 _NO_TAG = -1
+_SIDE_BY_SIDE_CHUNK = 1 << 17
+"""Bytes of a chunk where as many files as there are tags are read side by side."""
 
 
 class FileReader:
@@ -43,6 +48,12 @@ class FileReader:
         self._shape = row_shape(file.dialect, export, numbers)
         columns = file.dialect.columns
         self._place = [numbers.index(columns[name]) if name in columns else None for name in export.tags]
+        is_counter = [tag.between == "counter" for tag in self._tags]
+        own = {place for place, counts in zip(self._place, is_counter, strict=True) if counts}
+        own |= {0} if file.dialect.is_long and any(is_counter) else set()
+        self._counters = {place for place in own if place is not None}
+        """Number columns that hold counters."""
+        self._doubts = Doubts(file.path, export, self._tags, file.proof)
         self._clock = clock_of(export.clock)
         self._learnt = Learnt()
         self._tally = Tally(file)
@@ -58,11 +69,12 @@ class FileReader:
         """Give the rows of the file chunk by chunk, then its note."""
         stored, encoding = self._file.claim.stored, self._file.encoding
         digest = ""
+        size = _SIDE_BY_SIDE_CHUNK if self._file.point else None
         try:
             with open_stored(stored) as opened:
                 stream = _Hashing(opened) if stored.is_plain else opened
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
-                for chunk in read_chunks(text, codec_of_stream(encoding)):
+                for chunk in read_chunks(text, codec_of_stream(encoding), size):
                     yield from self._chunk(chunk)
                 if isinstance(stream, _Hashing):
                     digest = stream.sha256.hexdigest()
@@ -120,7 +132,7 @@ class FileReader:
         head = data[: len(data) - len(below)]
         columns = read_columns(head, self._shape, Learnt())
         texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        stamps = read_stamps(texts, self._export.date_order)
+        stamps = read_stamps(texts, style_of(self._export))
         lost = columns.line[stamps.good & np.isfinite(columns.values).any(axis=0)]
         if lost.size:
             tally.reject_line(tally.lines + int(lost[0]) + 1, _line_texts(head, lost[:1])[0], lost.size)
@@ -143,11 +155,15 @@ class FileReader:
             )
         )
 
-    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
+    def _columns(self, data: bytes) -> Columns:
         columns = read_columns(data, self._shape, self._learnt)
         self._learnt = columns.learnt
+        return keep_exponents(columns, self._shape, self._counters)
+
+    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
+        columns = self._columns(data)
         texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        return columns, read_stamps(texts, self._export.date_order), texts
+        return columns, read_stamps(texts, style_of(self._export)), texts
 
     def _open_hour(self, stamps: Stamps, columns: Columns) -> int | None:
         """First line of a repeated hour that reaches the end of the chunk: its passes may go on."""
@@ -169,24 +185,51 @@ class FileReader:
         kept = columns.lines if closed_at is None else closed_at
         fate[columns.line >= kept] = Fate.NO_DATA
         dated = (fate == Fate.GOOD) | (fate == Fate.OUTSIDE)
+        self._doubts.about_numbers(cells, line, dated)
+        self._count_lost_digits(cells, line, dated)
         self._see(instants_us, line, dated, cells)
         bad = np.flatnonzero(fate == Fate.BAD_STAMP)
+        self._doubts.about_dates(stamps, texts, line, bad[~stamps.good[bad]])
         bad_stamps = [" ".join(column.at(row) for column in texts) for row in bad.tolist()]
-        unreadable = ~stamps.good[bad]
-        if unreadable.any():
-            first = int(np.argmax(unreadable))
-            tally.reject_line(int(line[bad[first]]), bad_stamps[first], int(unreadable.sum()))
-        tally.rejected += int((~unreadable).sum())
-        tally.data += int(dated.sum())
+        first_rows, fate_of_lines = self._fate_of_lines(columns, fate)
+        lost = first_rows[fate_of_lines == Fate.BAD_STAMP]
+        unreadable = lost[~stamps.good[lost]]
+        if unreadable.size:
+            text = " ".join(column.at(int(unreadable[0])) for column in texts)
+            tally.reject_line(int(line[unreadable[0]]), text, unreadable.size)
+        tally.rejected += lost.size - unreadable.size
+        data = int(((fate_of_lines == Fate.GOOD) | (fate_of_lines == Fate.OUTSIDE)).sum())
+        tally.data += data
         tally.outside += int((fate == Fate.OUTSIDE).sum())
-        tally.skipped += int(((fate == Fate.NO_DATA) & (columns.line < kept)).sum())
+        passed_over = first_rows[fate_of_lines == Fate.NO_DATA]
+        tally.skipped += int((columns.line[passed_over] < kept).sum())
         if closed_at is not None:
             tally.reject_line(first_line + kept, "", columns.lines - kept)
         for place in dialect.unclaimed:
-            tally.unclaimed[dialect.headings[place]] += int(dated.sum()) + bad.size
+            tally.unclaimed[dialect.headings[place]] += data + lost.size
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
         if piece.instants_us.size or piece.rejected.any():
             yield piece
+
+    def _count_lost_digits(self, cells: Cells, line: NDArray[np.int64], dated: NDArray[np.bool_]) -> None:
+        """Note readings of counters whose exponent hides digits."""
+        for tag, reader in enumerate(self._readers):
+            if reader.counter_step is None:
+                continue
+            own = (cells.tag == tag) & (cells.disposition == Disposition.UNPARSEABLE) & dated[cells.row]
+            words = np.unique(cells.word[own])
+            short = [word for word in words.tolist() if reader.hides_digits(cells.words[word].strip())]
+            hit = np.flatnonzero(own & np.isin(cells.word, short))
+            if hit.size:
+                first = int(hit[np.argmin(line[cells.row[hit]])])
+                place = (int(line[cells.row[first]]), cells.words[cells.word[first]].strip())
+                self._tally.lose_digits(self._tags[tag].name, place, hit.size)
+
+    def _fate_of_lines(
+        self, columns: Columns, fate: NDArray[np.int8]
+    ) -> tuple[NDArray[np.int64], NDArray[np.int8]]:
+        """First row of each line, and the fate of the line: here every row is a line."""
+        return np.arange(fate.size), fate
 
     def _decide(self, columns: Columns) -> Cells:
         sentinels = self._export.sentinels
@@ -195,7 +238,8 @@ class FileReader:
         cells, unknown = decide_long(columns, [tag.column for tag in self._tags], self._readers, sentinels)
         for name, count in unknown.items():
             self._tally.unclaimed[name] = self._tally.unclaimed.get(name, 0) + count
-        return cells
+        quality = self._export.layout.quality if isinstance(self._export.layout, LongLayout) else None
+        return cells if quality is None else reject_by_quality(cells, columns.texts[-2], quality)
 
     def _instants(
         self, stamps: Stamps, cells: Cells, line: NDArray[np.int64]

@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
-from typing import Literal
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,33 +11,27 @@ from numpy.typing import NDArray
 from auditor.log_reading.cells import read_number
 from auditor.log_reading.clocks import Clock, clock_of
 from auditor.log_reading.dialect import Dialect, find_dialect, heading_key, split_fields
+from auditor.log_reading.doubts import Contradiction, flips, number_in_doubt
 from auditor.log_reading.encoding import Encoding
+from auditor.log_reading.file_per_tag import name_in_file, tags_named
 from auditor.log_reading.listing import Claim
+from auditor.log_reading.pairs_layout import line_by_line
 from auditor.log_reading.resets import StampDays, stamp_days
 from auditor.log_reading.samples import Sample, Sampled, line_at, take_samples
-from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words
+from auditor.log_reading.stamps import NO_OFFSET, Stamps, Texts, read_stamps, shape_in_words, style_of
 from auditor.log_reading.table import Columns, Learnt, Shape, as_texts, distinct, read_columns
-from auditor.records.plant import DateOrder, Export, Tag
+from auditor.records.plant import DateOrder, Export, FilePerTag, Tag
 
 HEAD_LINES = 400
+_HOUR_US = 3_600_000_000
 _ORDERS: tuple[DateOrder, ...] = (
     "year first",
     "day first",
     "month first",
     "epoch seconds",
     "epoch milliseconds",
+    "spreadsheet days",
 )
-
-
-@dataclass(frozen=True)
-class Contradiction:
-    """A cell that the declaration of its export cannot read, while another one can."""
-
-    line: int
-    text: str
-    column: str
-    reads_as: str
-    """The declaration that would read it."""
 
 
 @dataclass(frozen=True)
@@ -68,6 +61,12 @@ class Look:
     """A stamp can be read with the declared order only."""
     decimal_contradiction: Contradiction | None
     decimal_proven: bool
+    grouped: Contradiction | None
+    """A number whose digits are grouped by a mark that is not declared."""
+    date_flips: int
+    """Stamps that can only be read with day and month the other way round."""
+    point: str = ""
+    """With one file per tag: the name of its tag."""
 
     @property
     def has_stamps(self) -> bool:
@@ -75,11 +74,29 @@ class Look:
         return self.first_us <= self.last_us
 
 
+@dataclass(frozen=True)
+class OtherTag:
+    """With one file per tag: a file that holds no tag of the plant file."""
+
+    name: str | None
+    """None where the file does not say it."""
+    pattern: str
+    """Where the name was looked for."""
+
+
 def row_shape(dialect: Dialect, export: Export, numbers: Sequence[int]) -> Shape:
     """Say what to cut out of the lines of a file."""
-    texts = dialect.stamp if dialect.tag_column is None else (*dialect.stamp, dialect.tag_column)
+    quality = () if dialect.quality_column is None else (dialect.quality_column,)
+    texts = dialect.stamp if dialect.tag_column is None else (*dialect.stamp, *quality, dialect.tag_column)
+    texts = dialect.pair_stamps or texts
     return Shape(
-        dialect.delimiter, export.decimal, dialect.fields, len(dialect.headings), texts, tuple(numbers)
+        dialect.delimiter,
+        export.decimal,
+        dialect.fields,
+        len(dialect.headings),
+        texts,
+        tuple(numbers),
+        bool(dialect.pair_stamps),
     )
 
 
@@ -108,23 +125,30 @@ def to_instants(
     return utc_us, second_us, skipped
 
 
-def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | tuple[str, ...]:
+def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | OtherTag | tuple[str, ...]:
     """Look into a file.
 
     Returns
     -------
-    Look or tuple of str
+    Look or OtherTag or tuple of str
         The fields of its first lines where no line names any declared heading.
     """
     sampled = take_samples(claim.stored, export.encoding)
     head = sampled.samples[0].lines(HEAD_LINES)
+    point, layout = "", export.layout
+    if isinstance(layout, FilePerTag):
+        name = name_in_file(layout, claim.stored.path, head)
+        tags = tags_named(name, tags) if name else {}
+        if not name or not tags:
+            return OtherTag(name, layout.file_name or layout.preamble or "")
+        point = name
     dialect = find_dialect(head, export, tags)
     if dialect is None:
         return _all_fields(head)
     seen = _Seen(claim, export, dialect, sampled)
     for place, sample in enumerate(sampled.samples):
         seen.add(sample, is_head=place == 0)
-    proof, against = _decimal_proof(sampled.samples[0], dialect, export)
+    proof, against, grouped = _decimal_proof(sampled.samples[0], dialect, export)
     return Look(
         claim=claim,
         encoding=sampled.encoding,
@@ -143,6 +167,9 @@ def look_at(claim: Claim, export: Export, tags: Mapping[str, Tag]) -> Look | tup
         dates_proven=seen.proven,
         decimal_contradiction=against,
         decimal_proven=proof,
+        grouped=grouped,
+        date_flips=seen.flips,
+        point=point,
     )
 
 
@@ -153,6 +180,9 @@ class _Seen:
         self._claim, self._export, self._dialect, self._encoding = claim, export, dialect, sampled.encoding
         self._shape = row_shape(dialect, export, ())
         self._clock = clock_of(export.clock)
+        # Pairs of a large file need not keep step on a line: reading waits longer for those that lag.
+        is_jittery = bool(dialect.pair_stamps) and not sampled.is_whole
+        self._tolerance_us = _HOUR_US if is_jittery else 0
         self._before_us: int | None = None
         self.first_us, self.last_us = np.iinfo(np.int64).max, np.iinfo(np.int64).min
         self.days: list[StampDays] = []
@@ -162,6 +192,8 @@ class _Seen:
         self.bad_stamp: tuple[int, str] | None = None
         self.against: Contradiction | None = None
         self.proven = False
+        self.flips = 0
+        """Stamps that can be read with day and month the other way round only."""
 
     def add(self, sample: Sample, is_head: bool) -> None:
         data, skipped = sample.data, 0
@@ -174,15 +206,21 @@ class _Seen:
         texts = [as_texts(column) for column in columns.texts]
         if self._dialect.is_long:
             self.names |= dict.fromkeys(heading_key(name) for name in distinct(columns.texts[-1])[1])
-            texts = texts[:-1]
-        stamps = read_stamps(texts, self._export.date_order)
+            texts = texts[: len(self._dialect.stamp)]
+        if self._dialect.pair_stamps:
+            columns = replace(columns, line=np.repeat(columns.line, len(texts)))
+            texts = [line_by_line(texts)]
+        stamps = read_stamps(texts, style_of(self._export))
         self._add_stamps(stamps, texts)
         bad = np.flatnonzero(~stamps.good & (texts[0].ends > texts[0].starts))
+        self.flips += flips(bad, texts, self._export).size
         if bad.size and (self.bad_stamp is None or self.against is None):
             self._add_bad(bad, texts, (sample, columns, skipped, is_head))
         if not self.proven and self._export.date_order in _ORDERS[:3]:
             others = [
-                read_stamps(texts, order).good for order in _ORDERS[:3] if order != self._export.date_order
+                read_stamps(texts, style_of(self._export, order)).good
+                for order in _ORDERS[:3]
+                if order != self._export.date_order
             ]
             self.proven = bool((stamps.good & ~np.any(others, axis=0)).any())
 
@@ -192,7 +230,7 @@ class _Seen:
         if not good.size:
             return
         if not self.stamp_format:
-            words = [shape_in_words(column.at(int(good[0])), self._export.date_order) for column in texts]
+            words = [shape_in_words(column.at(int(good[0])), style_of(self._export)) for column in texts]
             time = texts[1].at(int(good[0])).strip() if len(texts) > 1 else ""
             self.stamp_format = words[0] + (", the time of day in a column of its own" if time else "")
         self.first_us = min(self.first_us, int(utc_us[good].min()))
@@ -205,7 +243,7 @@ class _Seen:
         if self._before_us is not None:
             early = np.concatenate([[self._before_us], early])
             late = np.concatenate([[self._before_us], late])
-        self.falls += int((late[1:] < early[:-1]).sum())
+        self.falls += int((late[1:] < early[:-1] - self._tolerance_us).sum())
         self.rises += int((early[1:] > late[:-1]).sum())
         self._before_us = int(late[-1])
 
@@ -224,7 +262,7 @@ class _Seen:
         for order in _ORDERS:
             if self.against is not None or order == self._export.date_order:
                 continue
-            other = read_stamps([column.take(bad) for column in texts], order).good
+            other = read_stamps([column.take(bad) for column in texts], style_of(self._export, order)).good
             if other.any():
                 row = int(bad[np.argmax(other)])
                 text = " ".join(column.at(row).strip() for column in texts)
@@ -243,28 +281,45 @@ def without_lines(data: bytes, count: int) -> bytes:
     return data[place:]
 
 
-def _decimal_proof(sample: Sample, dialect: Dialect, export: Export) -> tuple[bool, Contradiction | None]:
-    """Whether fractions prove the declared decimal mark, and the first number with the other mark."""
+def _decimal_proof(
+    sample: Sample, dialect: Dialect, export: Export
+) -> tuple[bool, Contradiction | None, Contradiction | None]:
+    """Whether fractions prove the declared decimal mark; the first number that speaks against it.
+
+    Third, the first number whose digits are grouped by a mark that is not declared.
+    """
     data = without_lines(sample.data[: 1 << 16], dialect.first_data_line - 1)
     data = data[: data.rfind(b"\n") + 1]
     numbers = number_columns(dialect)
     if not data or not numbers:
-        return False, None
+        return False, None, None
     columns = read_columns(data, row_shape(dialect, export, numbers), Learnt())
     finite = columns.values[np.isfinite(columns.values)]
     is_proven = bool((finite != np.floor(finite)).any())
-    other: Literal[".", ","] = "," if export.decimal == "." else "."
-    against: Contradiction | None = None
+    found: dict[str, Contradiction] = {}
+    dated = _dated(columns, dialect, export)
     for place, (rows, texts) in zip(numbers, columns.words, strict=True):
         index, words = (rows, []) if texts is None else distinct(texts)
         for number, word in enumerate(words):
-            value = read_number(word.strip(), export.decimal)
-            if value is not None:
-                is_proven |= not value.is_integer()
-            elif against is None and read_number(word.strip(), other) is not None:
-                line = dialect.first_data_line + int(columns.line[rows[np.argmax(index == number)]])
-                against = Contradiction(line, word.strip(), dialect.headings[place], other)
-    return is_proven, against
+            value = read_number(word.strip(), export.decimal, export.thousands)
+            is_proven |= value is not None and not value.is_integer()
+            doubt = number_in_doubt(word.strip(), export, is_proven=False)
+            own = rows[(index == number) & dated[rows]] if value is None and doubt is not None else rows[:0]
+            if doubt is not None and own.size:
+                line = dialect.first_data_line + int(columns.line[own[0]])
+                against = Contradiction(line, word.strip(), dialect.headings[place], doubt[1])
+                found.setdefault(doubt[0], against)
+    return is_proven, found.get("decimal"), found.get("grouped")
+
+
+def _dated(columns: Columns, dialect: Dialect, export: Export) -> NDArray[np.bool_]:
+    """Rows with a stamp: a total below the data is none of them."""
+    texts = [as_texts(column) for column in columns.texts]
+    if dialect.pair_stamps:
+        good = [read_stamps([column], style_of(export)).good for column in texts]
+        any_good: NDArray[np.bool_] = np.any(good, axis=0)
+        return any_good
+    return read_stamps(texts[: len(dialect.stamp)], style_of(export)).good
 
 
 def _all_fields(head: Sequence[str]) -> tuple[str, ...]:

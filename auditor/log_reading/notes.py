@@ -58,8 +58,14 @@ class Tally:
     skipped_hour: int = 0
     skipped_hour_line: int = 0
     outside: int = 0
+    refused: int = 0
+    """Rejected lines whose text or fields are at fault."""
     first_rejected: tuple[int, str] | None = None
     unclaimed: dict[str, int] = field(default_factory=dict)
+    pairs: dict[str, int] = field(default_factory=dict)
+    """Pairs of columns: cells of each bound pair."""
+    lost_digits: dict[str, tuple[int, int, str]] = field(default_factory=dict)
+    """Counters: how many readings hide digits in an exponent, line and text of the first."""
     torn: int = 0
     footer: str = ""
     strays: int = 0
@@ -69,8 +75,14 @@ class Tally:
     def reject_line(self, line: int, text: str, count: int = 1) -> None:
         """Count a line that gave no row, and keep the first."""
         self.rejected += count
+        self.refused += count
         if self.first_rejected is None or line < self.first_rejected[0]:
             self.first_rejected = (line, text[:200])
+
+    def lose_digits(self, tag: str, place: tuple[int, str], count: int) -> None:
+        """Count readings of a counter that hide digits in an exponent, and keep the first."""
+        before, line, text = self.lost_digits.get(tag, (0, *place))
+        self.lost_digits[tag] = (before + count, line, text)
 
     def see(
         self, instants_us: NDArray[np.int64], line: NDArray[np.int64], before: tuple[int, int] | None
@@ -145,6 +157,9 @@ class Tally:
             evidence.append(
                 f"its stamps fall {self.falls - self.set_back} times for rows that were written late"
             )
+        if self.pairs:
+            counts = ", ".join(f"{name} {count}" for name, count in self.pairs.items())
+            evidence.append(f"cells of each pair of columns: {counts}")
         if self.outside:
             evidence.append(f"{self.outside} rows lie outside the stretch that was asked for")
         if self.strays:
@@ -161,7 +176,7 @@ class Tally:
             sha256=sha256,
             encoding=file.encoding.shown,
             delimiter=dialect.delimiter,
-            layout="long" if dialect.is_long else "wide",
+            layout="one file per tag" if file.point else dialect.layout,
             heading_line=dialect.heading_line,
             unit_line=dialect.unit_line,
             columns=dialect.headings,
@@ -179,11 +194,25 @@ class Tally:
             findings=tuple(self.findings + self._own_findings(export)),
         )
 
+    def _lost_digits(self, export: str) -> list[Finding]:
+        return [
+            Finding(
+                FindingCode.LOST_DIGITS,
+                export=export,
+                file=self.file.path,
+                line=line,
+                tag=tag,
+                numbers={"count": count},
+                words={"first": text},
+                suspects=(tag,),
+            )
+            for tag, (count, line, text) in self.lost_digits.items()
+        ]
+
     def _own_findings(self, export: str) -> list[Finding]:
         path = self.file.path
         found = []
-        others = self.rejected - self.dropped - self.skipped_hour - self.torn - self.resets
-        if others and self.first_rejected is not None:
+        if self.refused and self.first_rejected is not None:
             line, text = self.first_rejected
             found.append(
                 Finding(
@@ -191,10 +220,11 @@ class Tally:
                     export=export,
                     file=path,
                     line=line,
-                    numbers={"count": others, "lines": self.lines},
+                    numbers={"count": self.refused, "lines": self.lines},
                     words={"first": text},
                 )
             )
+        found += self._lost_digits(export)
         if self.dropped:
             found.append(
                 Finding(

@@ -8,8 +8,10 @@ from auditor.log_reading.aliases import Folding, by_tag, with_joins
 from auditor.log_reading.file_reading import FileReader
 from auditor.log_reading.merge import ALWAYS, NEVER, Source, merge
 from auditor.log_reading.notes import unread_note, with_late_rows
+from auditor.log_reading.pairs_reading import PairsReader
 from auditor.log_reading.pieces import Piece
 from auditor.log_reading.recognition import RecognisedFile, Recognition
+from auditor.log_reading.spill import in_order
 from auditor.records.samples import ReadingNote, SampleBlock
 
 _SLACK_US = 3 * 3_600_000_000
@@ -38,8 +40,8 @@ def read_export(
 
     Notes
     -----
-    Memory is that of a few chunks, plus the stretch over which files overlap, plus the whole of a
-    file whose rows are not in order.
+    Memory is that of a few chunks, plus the stretch over which files overlap. A large file whose rows
+    are not in order is put aside day by day in the system's folder for temporary files.
     """
     export = recognition.exports[export_name]
     folding = Folding(export, recognition.tags)
@@ -57,9 +59,12 @@ def _source(
     file: RecognisedFile, recognition: Recognition, folding: Folding, window_us: tuple[int, int]
 ) -> Source:
     def read() -> Iterator[Piece | ReadingNote]:
-        pieces = FileReader(file, folding.export, recognition.tags, window_us).read()
+        reader = PairsReader if file.dialect.pair_stamps else FileReader
+        pieces = reader(file, folding.export, recognition.tags, window_us).read()
         return folding.fold(pieces) if folding.is_needed else pieces
 
+    if not file.is_ordered and not file.is_whole:
+        return Source(file.path, file.claim.pattern, ALWAYS, 0, lambda: in_order(read()))
     margin_us = 0 if file.is_whole else _SLACK_US
     slack_us = margin_us if file.is_ordered else NEVER
     floor_us = file.first_us - margin_us if file.has_stamps else ALWAYS

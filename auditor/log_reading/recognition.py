@@ -8,14 +8,22 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from auditor.log_reading.aliases import by_heading, tag_of, unread_tags
-from auditor.log_reading.dialect import Dialect, duplicate_headings, heading_key, unit_faults
+from auditor.log_reading.dialect import (
+    Dialect,
+    duplicate_headings,
+    heading_key,
+    long_headings,
+    unit_faults,
+)
+from auditor.log_reading.doubts import Proof, contradicted, grouped, mixed_dates
 from auditor.log_reading.encoding import Encoding
+from auditor.log_reading.file_per_tag import pattern_key
 from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
-from auditor.log_reading.look import Contradiction, Look, look_at
+from auditor.log_reading.look import Look, OtherTag, look_at
 from auditor.log_reading.resets import ANY_TIME, believed_range, range_of
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.findings import Finding, FindingCode
-from auditor.records.plant import Export, Tag
+from auditor.records.plant import Export, FilePerTag, LongLayout, Tag
 
 _FOLDER_OF_MANY = 3
 """So many unclaimed files of one folder are told as one."""
@@ -36,6 +44,10 @@ class RecognisedFile:
     is_descending: bool
     stamp_format: str
     evidence: tuple[str, ...]
+    proof: Proof
+    """What the files of its export have proven together."""
+    point: str = ""
+    """With one file per tag: the name of its tag."""
     believed_us: tuple[int, int] = ANY_TIME
     """Stamps outside are those of a clock that was reset."""
 
@@ -153,6 +165,8 @@ class _Pool:
         self.unopened: list[UnopenedFile] = []
         self.fields: list[str] = []
         """Fields of files without a heading row: where a misspelt heading may stand."""
+        self.points: dict[str, None] = {}
+        """With one file per tag: names that the files gave."""
         self._unreadable: list[Finding] = []
 
     def add(self, claim: Claim) -> None:
@@ -163,9 +177,21 @@ class _Pool:
             return
         if isinstance(look, Look):
             self.looks.append(look)
+            self.points[look.point] = None
+        elif isinstance(look, OtherTag):
+            self._pass_over(claim, look)
         else:
             self.fields += [field for field in look if field.isprintable()]
             self._refuse(claim, "no heading row")
+
+    def _pass_over(self, claim: Claim, other: OtherTag) -> None:
+        """Set aside a file of another tag, or one that does not say which tag it holds."""
+        if other.name is None:
+            self._refuse(claim, f'nothing in it fits "{other.pattern}", which would name its tag')
+            return
+        self.points[other.name] = None
+        reason = f'it holds "{other.name}", which no tag of the plant file binds'
+        self.unopened.append(UnopenedFile(claim.stored, claim.export, claim.pattern, reason))
 
     def _refuse(self, claim: Claim, reason: str) -> None:
         self.unopened.append(UnopenedFile(claim.stored, claim.export, claim.pattern, reason))
@@ -173,7 +199,7 @@ class _Pool:
 
     def faults(self) -> list[Fault]:
         """Everything that contradicts the plant file."""
-        if not self.looks and not self.fields:
+        if not self.looks and not self.fields and not self.points:
             return []
         faults = self._missing_headings()
         for look in self.looks:
@@ -187,7 +213,8 @@ class _Pool:
 
     def findings(self) -> list[Finding]:
         """Return what is odd, but no fault."""
-        unclaimed: dict[str, None] = {}
+        bound_points = {look.point for look in self.looks}
+        unclaimed = dict.fromkeys(point for point in self.points if point not in bound_points)
         for look in self.looks:
             if look.dialect.is_long:
                 bound = {heading_key(tag.column) for tag in self.tags.values()}
@@ -212,7 +239,8 @@ class _Pool:
         return tuple(self._file(look, believed_us) for look in looks)
 
     def _file(self, look: Look, believed_us: tuple[int, int]) -> RecognisedFile:
-        missing = [] if look.dialect.is_long else unread_tags(self.export.tags, look.dialect.columns)
+        is_told_apart = look.dialect.is_long or bool(look.point)
+        missing = [] if is_told_apart else unread_tags(self.export.tags, look.dialect.columns)
         evidence = [f"{look.encoding.shown}: {look.encoding.evidence}", *look.dialect.evidence]
         evidence += unit_faults(look.dialect, look.head, look.claim.stored.path, self.tags)[1]
         if look.dates_proven:
@@ -224,6 +252,11 @@ class _Pool:
         if look.decimal_proven:
             mark = "comma" if self.export.decimal == "," else "point"
             evidence.append(f"its numbers have a decimal {mark}, as declared")
+        if look.point:
+            key = pattern_key(self.export.layout) if isinstance(self.export.layout, FilePerTag) else ""
+            evidence.append(f'it holds the tag "{look.point}" (found by {key})')
+        if look.dialect.pair_stamps:
+            evidence.append(f"{len(look.dialect.pair_stamps)} pairs of columns, a stamp left of each value")
         if missing:
             evidence.append(f"it has no column for {', '.join(missing)}")
         if not look.is_ordered:
@@ -243,6 +276,13 @@ class _Pool:
             is_descending=look.is_descending,
             stamp_format=look.stamp_format,
             evidence=tuple(evidence),
+            point=look.point,
+            proof=self._proof(),
+        )
+
+    def _proof(self) -> Proof:
+        return Proof(
+            any(look.dates_proven for look in self.looks), any(look.decimal_proven for look in self.looks)
         )
 
     def _missing_headings(self) -> list[Fault]:
@@ -252,9 +292,12 @@ class _Pool:
         )
         names, where = headings, f"exports.{export.name}"
         wanted = [(f"plant.toml, {where}.stamp_columns", name) for name in export.stamp_columns]
-        if export.layout is not None:
-            keys = ("stamp", "tag", "value")
-            wanted = [(f"plant.toml, {where}.layout.{key}", getattr(export.layout, key)) for key in keys]
+        if isinstance(export.layout, LongLayout):
+            named = long_headings(export.layout)
+            wanted = [(f"plant.toml, {where}.layout.{key}", name) for key, name in named.items()]
+        elif isinstance(export.layout, FilePerTag):
+            if self.looks or self.fields:
+                wanted.append((f"plant.toml, {where}.layout.value", export.layout.value))
         else:
             wanted += [(_place_of(tag), tag.column) for _, tag in self._lost(headings)]
         faults = [
@@ -262,8 +305,10 @@ class _Pool:
             for place, name in wanted
             if heading_key(name) not in headings
         ]
-        if export.layout is not None and self.looks and all(look.is_whole for look in self.looks):
+        has_points = isinstance(export.layout, LongLayout) and all(look.is_whole for look in self.looks)
+        if (has_points and self.looks) or isinstance(export.layout, FilePerTag):
             points = list(dict.fromkeys(name for look in self.looks for name in look.long_names))
+            points += self.points
             faults += [_no_heading(_place_of(tag), tag.column, points, self) for _, tag in self._lost(points)]
         return faults
 
@@ -275,14 +320,24 @@ class _Pool:
     def _contradictions(self) -> list[Fault]:
         faults = []
         key = f"exports.{self.export.name}"
-        if not any(look.dates_proven for look in self.looks):
-            found = next(((x, x.date_contradiction) for x in self.looks if x.date_contradiction), None)
-            if found is not None:
-                faults.append(_contradicted(*found, f"{key}.date_order", self.export.date_order))
-        if not any(look.decimal_proven for look in self.looks):
-            found = next(((x, x.decimal_contradiction) for x in self.looks if x.decimal_contradiction), None)
-            if found is not None:
-                faults.append(_contradicted(*found, f"{key}.decimal", self.export.decimal))
+        proof = self._proof()
+        flipped = next((look for look in self.looks if look.date_flips > 1), None)
+        dated = next((look for look in self.looks if look.date_contradiction), None)
+        if not proof.dates and dated is not None and dated.date_contradiction is not None:
+            found = dated.date_contradiction
+            path, order = dated.claim.stored.path, self.export.date_order
+            faults.append(contradicted(path, found, f"{key}.date_order", order))
+        elif flipped is not None and flipped.date_contradiction is not None:
+            found = flipped.date_contradiction
+            faults.append(mixed_dates(flipped.claim.stored.path, found, self.export))
+        doubtful = next((look for look in self.looks if look.grouped), None)
+        pointed = next((look for look in self.looks if look.decimal_contradiction), None)
+        if doubtful is not None and doubtful.grouped is not None:
+            faults.append(grouped(doubtful.claim.stored.path, doubtful.grouped, self.export))
+        elif not proof.decimal and pointed is not None and pointed.decimal_contradiction is not None:
+            found = pointed.decimal_contradiction
+            path, mark = pointed.claim.stored.path, self.export.decimal
+            faults.append(contradicted(path, found, f"{key}.decimal", mark))
         bad = next((look for look in self.looks if look.bad_stamp is not None), None)
         if (
             not faults
@@ -296,7 +351,7 @@ class _Pool:
                     f"logs/{bad.claim.stored.path}:{line}, {key}.date_order",
                     f'no stamp of this export can be read; the first is "{text}"',
                     f"declare the order of the date ({key}.date_order) and, where the stamp is not the first"
-                    f" column, {key}.stamp_columns; days, months and hours are read as digits only",
+                    f" column, {key}.stamp; names of months that are not English need {key}.month_names",
                 )
             )
         return faults
@@ -319,15 +374,6 @@ def _no_heading(place: str, name: str, names: Sequence[str], pool: _Pool) -> Fau
         place,
         f'"{name}" is in none of the {files} files of export {pool.export.name}; {nearest}',
         "write the name exactly as it stands in the export, or correct the export's files",
-    )
-
-
-def _contradicted(look: Look, found: Contradiction, key: str, declared: str) -> Fault:
-    return Fault(
-        f"logs/{look.claim.stored.path}:{found.line}, column {found.column}",
-        f'"{found.text}" cannot be read with {key} = "{declared}", and nothing in this export needs it;'
-        f' it can be read with "{found.reads_as}"',
-        f'set {key} = "{found.reads_as}", if that is how this logger writes',
     )
 
 

@@ -27,6 +27,8 @@ _NOT_A_NUMBER = re.compile(
 )
 _MOST_WORDS_PER_CHUNK = 24
 _MOST_WORDS = 64
+_MOST_LIKE_NUMBERS = 2
+_LIKE_A_NUMBER = re.compile(r"\s*[+-]?\d")
 
 
 @dataclass(frozen=True)
@@ -42,6 +44,8 @@ class Shape:
     """Columns wanted as text."""
     numbers: tuple[int, ...]
     """Columns wanted as numbers."""
+    is_pairs: bool = False
+    """Lines may end behind any whole pair of columns."""
 
 
 @dataclass(frozen=True)
@@ -125,7 +129,7 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
         line = np.delete(line, [bad.line for bad in ragged])
     texts = tuple(table.column(f"c{place}").combine_chunks() for place in shape.texts)
     values, missing = _matrix(table, shape)
-    cells = _texts_of(body, shape, line, missing)
+    cells = texts_of_rows(body, shape, line, missing)
     return Columns(body, line, texts, values, cells, tuple(ragged), lines, after)
 
 
@@ -157,6 +161,7 @@ def _numbers(
     words, wordy = set(learnt.words), set(learnt.wordy)
     text_now = {place for place in shape.numbers if place in wordy}
     tries = 0
+    like_numbers = dict.fromkeys(shape.numbers, 0)
     while True:
         ragged: list[Ragged] = []
         try:
@@ -169,7 +174,9 @@ def _numbers(
             column, word = int(found[1]), found[2]
             # A padded word is reported without its blanks and would not match: its column is read
             # as text in this chunk. One with a new word in every cell is never tried again.
-            if tries > _MOST_WORDS_PER_CHUNK:
+            # Numbers written otherwise (grouped, or with their unit) differ from cell to cell.
+            like_numbers[column] += _LIKE_A_NUMBER.match(word) is not None
+            if tries > _MOST_WORDS_PER_CHUNK or like_numbers[column] > _MOST_LIKE_NUMBERS:
                 text_now.add(column)
                 wordy.add(column)
             elif word in known or not word:
@@ -257,7 +264,7 @@ def _nulls(piece: pa.Array) -> NDArray[np.bool_]:
     return ~is_valid.view(np.bool_)
 
 
-def _texts_of(
+def texts_of_rows(
     data: bytes, shape: Shape, line: NDArray[np.int64], missing: list[NDArray[np.int64]]
 ) -> tuple[tuple[NDArray[np.int64], pa.Array | None], ...]:
     """Read the cells without a number as text: only their rows, only their columns."""
@@ -282,14 +289,16 @@ def _texts_of(
             continue
         column = table.column(f"c{place}").combine_chunks()
         some = place_of[rows]
-        picked = column if some.size == kept.size else column.take(_indices(some))
+        picked = column if some.size == kept.size else take(column, some)
         out.append((rows, picked))
     return tuple(out)
 
 
-def _indices(rows: NDArray[np.int64]) -> pa.Array:
+def take(column: pa.Array, rows: NDArray[np.int64]) -> pa.Array:
+    """Pick some cells of a column of the parser."""
     # pa.array() would import pandas, a third of a second.
-    return pa.Array.from_buffers(pa.int64(), rows.size, [None, pa.py_buffer(np.ascontiguousarray(rows))])
+    indices = pa.Array.from_buffers(pa.int64(), rows.size, [None, pa.py_buffer(np.ascontiguousarray(rows))])
+    return column.take(indices)
 
 
 def _lines(data: bytes, wanted: NDArray[np.int64]) -> bytes:
@@ -317,12 +326,16 @@ def _with_sound_quotes(data: bytes, delimiter: str) -> tuple[bytes, bool]:
 
 
 def _mended(ragged: Sequence[Ragged], shape: Shape) -> list[tuple[int, bytes]]:
-    """Lines that differ from the others by idle separators at their end only, made alike."""
+    """Lines that differ from the others by idle separators, or pairs without end, made alike."""
     mended = []
     for bad in ragged:
         fields = _cut(bad.text, shape.delimiter)
         surplus = fields[shape.headings :]
-        if len(fields) >= shape.headings > 1 and not any(field.strip() for field in surplus):
+        is_short = shape.is_pairs and 1 < len(fields) < shape.headings
+        is_short &= (shape.headings - len(fields)) % 2 == 0
+        is_long = len(fields) >= shape.headings > 1 and not any(field.strip() for field in surplus)
+        if is_short or is_long:
+            fields += [""] * (shape.headings - len(fields))
             padded = fields[: shape.headings] + [""] * (shape.fields - shape.headings)
             quoted = (f'"{field}"' if shape.delimiter in field else field for field in padded)
             mended.append((bad.line, shape.delimiter.join(quoted).encode("utf-8", "replace")))

@@ -16,11 +16,14 @@ from auditor.plant_file.leaves import (
     Duration,
     Encoding,
     FilePatterns,
+    MonthNames,
+    NameOrNames,
     OneLine,
     OwnUnitValue,
     Spread,
     StampColumns,
     TagListFile,
+    TagPattern,
     UnitText,
 )
 from auditor.plant_file.parts import Choice, Part, keys_of, optional, required
@@ -35,8 +38,8 @@ _BETWEEN = "what the value means between two stamps: step, line, mean, amount, c
 _HOLD = "longest time between two samples that is still covered"
 _FULL_STRETCH = "longest stretch that one stamp can stand for"
 _COLUMN = (
-    "heading of the column; in a long export its name in the tag column; a list where it was renamed, "
-    "with from and until where the dates matter"
+    "heading of the column; in a long export, or with one file per tag, the name of the tag there; "
+    "a list where it was renamed, with from and until where the dates matter"
 )
 _CHANGES = "what is different about the tag from a date on: unit, range, uncertainty..."
 _KELVINS = [{"from": "2026-07-20", "unit": "K"}, {"from": "2026-07-21", "unit": "degC"}]
@@ -205,12 +208,56 @@ def tag_form(raw: Mapping[str, Any]) -> type[Part]:
     return _TAG_FORMS.get(str(raw.get("between")), UndecidedTag)
 
 
+class QualityPart(Part):
+    """Column of a long export that says whether its value is good."""
+
+    column: OneLine = required("heading of the quality code", "quality")
+    good: NameOrNames = required(
+        "codes of good values, as they stand in the file; every other code is rejected and counted",
+        ["192", "good"],
+    )
+
+
 class LongLayoutPart(Part):
     """Headings of a long export: one row per stamp, tag and value."""
 
     stamp: OneLine = required("heading of the stamp", "time")
     tag: OneLine = required("heading of the column that names the tag", "point")
     value: OneLine = required("heading of the value", "reading")
+    quality: QualityPart | None = optional(
+        "column that says whether the value is good", {"column": "quality", "good": ["192", "good"]}
+    )
+
+
+class PairsLayoutPart(Part):
+    """Every tag has a stamp column of its own."""
+
+    pairs: Literal[True] = required(
+        "each tag's column has its own stamp column, at its left; the pairs may differ in length", True
+    )
+
+
+class FilePerTagPart(Part):
+    """Every file holds one tag; a tag's "column" is the name found in the file's name or first lines."""
+
+    either: ClassVar[tuple[tuple[str, str], ...]] = (("tag_in_file_name", "tag_in_preamble"),)
+
+    tag_in_file_name: TagPattern | None = optional(
+        "name of a file with {tag} where the name of its tag stands; * for any other text",
+        "trend_{tag}_*.csv",
+    )
+    tag_in_preamble: TagPattern | None = optional(
+        "line above the headings with {tag} where the name of the tag stands; * for any other text",
+        "Point: {tag}",
+    )
+    value: OneLine = required("heading of the value", "reading")
+
+
+def layout_form(raw: Mapping[str, Any]) -> type[Part]:
+    """Form of a layout other than one column per tag."""
+    if "pairs" in raw:
+        return PairsLayoutPart
+    return FilePerTagPart if {"tag_in_file_name", "tag_in_preamble"} & raw.keys() else LongLayoutPart
 
 
 class ExportPart(Part):
@@ -231,10 +278,17 @@ class ExportPart(Part):
         "patterns below logs/; where two of them hold the same stamp, the earlier one wins", ["power/*.csv"]
     )
     clock: Clock = required("whose clock the stamps are of: a zone, UTC or a fixed offset", "+01:00")
-    date_order: Literal["year first", "day first", "month first", "epoch seconds", "epoch milliseconds"] = (
-        required("how stamps are written", "day first")
-    )
+    date_order: Literal[
+        "year first", "day first", "month first", "epoch seconds", "epoch milliseconds", "spreadsheet days"
+    ] = required("how stamps are written; spreadsheet days are serial dates such as 45931.25", "day first")
     decimal: Literal[".", ","] = required("decimal mark of the numbers", ",")
+    thousands: Literal["space", "'", ".", ","] | None = optional(
+        "mark between groups of three digits; space stands for no-break and thin ones too", "space"
+    )
+    month_names: MonthNames | None = optional(
+        "names of the months in the stamps, January first; English names are known without",
+        ["jan", "feb", "mar", "apr", "maj", "jun", "jul", "aug", "sep", "okt", "nov", "dec"],
+    )
     repeated_hour: Literal["by order", "drop"] | None = optional(
         "how the hour is resolved that an autumn clock change repeats; by order without it", "by order"
     )
@@ -242,9 +296,12 @@ class ExportPart(Part):
         "column separator; found from the files without it", ";"
     )
     encoding: Encoding | None = optional("text encoding; found from the files without it", "cp1252")
-    layout: LongLayoutPart | None = optional(
-        "only for a long export, one row per stamp, tag and value",
-        {"stamp": "time", "tag": "point", "value": "reading"},
+    layout: Annotated[LongLayoutPart | PairsLayoutPart | FilePerTagPart, Choice(layout_form)] | None = (
+        optional(
+            "only where a file is not one column per tag with one stamp: one row per stamp, tag and value;"
+            " pairs of columns; or one file per tag",
+            {"stamp": "time", "tag": "point", "value": "reading"},
+        )
     )
     stamp: StampColumns | None = optional(
         "heading of the stamp, or two where date and time stand apart; the first column without it",

@@ -141,6 +141,29 @@ def name_or_names(value: object) -> tuple[str, ...]:
     return names
 
 
+def month_names(value: object) -> tuple[str, ...]:
+    """Accept the names of the twelve months, January first."""
+    names = tuple(one_line(item).strip() for item in (value if isinstance(value, list) else [value]))
+    plain = {name.casefold() for name in names}
+    if len(names) != 12 or len(plain) != 12 or any(re.search(r"[\d\s]", name) for name in names):
+        raise UnusableError(
+            f"{shown(value)} are not twelve different names without digits or blanks",
+            "write the names of the twelve months as the export writes them, January first",
+        )
+    return names
+
+
+def tag_pattern(text: object) -> str:
+    """Accept a pattern in which ``{tag}`` stands once for the name of a tag."""
+    pattern = one_line(text)
+    if pattern.count("{tag}") != 1:
+        raise UnusableError(
+            f"{shown(pattern)} does not say where the name of the tag stands",
+            'write {tag} once in its place and * for any other text: "trend_{tag}_*.csv", "Point: {tag}"',
+        )
+    return pattern
+
+
 def zone(text: object) -> str:
     """Accept a zone of the IANA database."""
     name = one_line(text)
@@ -267,6 +290,8 @@ Words: TypeAlias = Annotated[str, Leaf(words, _TEXT_SCHEMA)]
 FilePatterns: TypeAlias = Annotated[tuple[str, ...], Leaf(file_patterns, _TEXTS_SCHEMA)]
 TagListFile: TypeAlias = Annotated[str, Leaf(tag_list_file, _TEXT_SCHEMA)]
 StampColumns: TypeAlias = Annotated[tuple[str, ...], Leaf(stamp_columns, _TEXT_OR_TEXTS)]
+MonthNames: TypeAlias = Annotated[tuple[str, ...], Leaf(month_names, _TEXTS_SCHEMA)]
+TagPattern: TypeAlias = Annotated[str, Leaf(tag_pattern, _TEXT_SCHEMA)]
 NameOrNames: TypeAlias = Annotated[tuple[str, ...], Leaf(name_or_names, _TEXT_OR_TEXTS)]
 Zone: TypeAlias = Annotated[str, Leaf(zone, _TEXT_SCHEMA)]
 Clock: TypeAlias = Annotated[str, Leaf(clock, _TEXT_SCHEMA)]

@@ -6,7 +6,7 @@ import re
 from collections.abc import Mapping
 
 from auditor.plant_file.clocks import instant_us
-from auditor.plant_file.export_parts import ExportPart
+from auditor.plant_file.export_parts import ExportPart, FilePerTagPart, LongLayoutPart, PairsLayoutPart
 from auditor.plant_file.faults import FaultBook, UnusableError, choices
 from auditor.plant_file.leaves import FIXED_OFFSET
 from auditor.plant_file.quantities import Amount, UncertaintyKind, assumed, uncertainty
@@ -18,7 +18,18 @@ from auditor.plant_file.site_parts import (
     SitePart,
 )
 from auditor.plant_file.standard_air import HIGHEST_ALTITUDE_M, LOWEST_ALTITUDE_M, standard_pressure_Pa
-from auditor.records.plant import AirPressure, Distrust, Export, LongLayout, Rules, Site, Tag
+from auditor.records.plant import (
+    AirPressure,
+    Distrust,
+    Export,
+    FilePerTag,
+    LongLayout,
+    PairsLayout,
+    Quality,
+    Rules,
+    Site,
+    Tag,
+)
 from auditor.records.uncertain import Assumed
 
 _HOUR_S = 3600
@@ -162,8 +173,14 @@ def resolve_export(name: str, part: ExportPart, book: FaultBook) -> Export | Non
             f'the clock "{part.clock}" never repeats an hour',
             "remove the key, or write the zone whose summer time the logger follows as the clock",
         )
-    if part.stamp is not None and part.layout is not None:
+    if part.stamp is not None and isinstance(part.layout, LongLayoutPart | PairsLayoutPart):
         book.add((*path, "stamp"), "the layout names the stamp already", "remove one of the two")
+    if part.thousands is not None and part.thousands == part.decimal:
+        book.add(
+            (*path, "thousands"),
+            f'"{part.thousands}" cannot both group the digits and be the decimal mark',
+            "correct one of the two, or remove thousands where the digits are not grouped",
+        )
     counts_seconds = part.date_order is not None and part.date_order.startswith("epoch")
     if counts_seconds and part.clock not in (None, "UTC"):
         book.add(
@@ -173,7 +190,6 @@ def resolve_export(name: str, part: ExportPart, book: FaultBook) -> Export | Non
         )
     if not book.clean(path):
         return None
-    layout = part.layout
     return Export(
         name=name,
         files=part.files,
@@ -183,13 +199,27 @@ def resolve_export(name: str, part: ExportPart, book: FaultBook) -> Export | Non
         decimal=part.decimal,
         delimiter="\t" if part.delimiter == "tab" else part.delimiter,
         encoding=part.encoding,
-        layout=None if layout is None else LongLayout(layout.stamp, layout.tag, layout.value),
+        layout=_layout(part),
         stamp_columns=part.stamp or (),
         sentinels=tuple(part.sentinels or ()),
         status_words=dict(part.status_words or {}),
         when_stamps_repeat=part.when_stamps_repeat,
         tags=tuple(part.tags),
+        thousands=part.thousands,
+        month_names=part.month_names or (),
     )
+
+
+def _layout(part: ExportPart) -> LongLayout | PairsLayout | FilePerTag | None:
+    layout = part.layout
+    if layout is None:
+        return None
+    if isinstance(layout, PairsLayoutPart):
+        return PairsLayout()
+    if isinstance(layout, FilePerTagPart):
+        return FilePerTag(layout.value, layout.tag_in_file_name, layout.tag_in_preamble)
+    quality = None if layout.quality is None else Quality(layout.quality.column, layout.quality.good)
+    return LongLayout(layout.stamp, layout.tag, layout.value, quality)
 
 
 def check_patterns(exports: Mapping[str, ExportPart], book: FaultBook) -> None:

@@ -27,6 +27,7 @@ class FindingCode(StrEnum):
     UNREADABLE_FILE = "unreadable file"
     INCOMPLETE_LINE = "incomplete line"
     REJECTED_LINES = "rejected lines"
+    LOST_DIGITS = "lost digits"
     MISSING_EXPORT = "missing export"
     OPEN_BALANCE = "open balance"
     IMPOSSIBLE_CLUSTER = "impossible cluster"

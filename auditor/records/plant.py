@@ -14,7 +14,11 @@ if TYPE_CHECKING:
 
 Between = Literal["step", "line", "mean", "amount", "counter", "state"]
 _EVER_US = (-(2**62), 2**62)
-DateOrder = Literal["year first", "day first", "month first", "epoch seconds", "epoch milliseconds"]
+DateOrder = Literal[
+    "year first", "day first", "month first", "epoch seconds", "epoch milliseconds", "spreadsheet days"
+]
+Thousands = Literal["space", "'", ".", ","]
+"""Mark between groups of three digits; ``space`` is every blank, no-break and thin ones too."""
 
 
 @dataclass(frozen=True)
@@ -55,12 +59,40 @@ class Site:
 
 
 @dataclass(frozen=True)
+class Quality:
+    """Column of a long export that says whether its value is good."""
+
+    column: str
+    good: tuple[str, ...]
+    """Codes of good values, verbatim; every other one is rejected and counted."""
+
+
+@dataclass(frozen=True)
 class LongLayout:
     """Column names of a long export: one row per stamp, tag and value."""
 
     stamp: str
     tag: str
     value: str
+    quality: Quality | None = None
+
+
+@dataclass(frozen=True)
+class PairsLayout:
+    """Every tag's column has a stamp column of its own, at its left; columns may differ in length."""
+
+
+@dataclass(frozen=True)
+class FilePerTag:
+    """Every file holds one tag, named by the name of the file or by a line above its headings.
+
+    Exactly one of the two patterns is given; ``{tag}`` in it stands for the name.
+    """
+
+    value: str
+    """Heading of the value."""
+    file_name: str | None
+    preamble: str | None
 
 
 @dataclass(frozen=True)
@@ -80,7 +112,7 @@ class Export:
     """Declared delimiter; None: found from the files."""
     encoding: str | None
     """Declared text encoding; None: found from the files."""
-    layout: LongLayout | None
+    layout: LongLayout | PairsLayout | FilePerTag | None
     """None: wide, one column per tag."""
     stamp_columns: tuple[str, ...]
     """Heading(s) of the stamp (date and time apart: two); empty: the first column."""
@@ -92,6 +124,10 @@ class Export:
     """Which of several *differing* values of one stamp is kept; equal ones are duplicates."""
     tags: tuple[str, ...]
     """Names of the tags read from this export, in the order of the plant file."""
+    thousands: Thousands | None = None
+    """Mark between groups of three digits; None: numbers are not grouped."""
+    month_names: tuple[str, ...] = ()
+    """Twelve names of months as the export writes them; English ones are known without."""
 
 
 @dataclass(frozen=True)
@@ -147,7 +183,7 @@ class Tag:
     name: str
     export: str
     column: str
-    """Heading of the column (wide) or the name in the tag column (long)."""
+    """Heading of the column; the name in the tag column (long) or of the file (one tag per file)."""
     unit: str
     """As written in the plant file; empty for a state."""
     quantity: str

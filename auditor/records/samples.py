@@ -104,7 +104,7 @@ class ReadingNote:
     delimiter: str
     """``,`` ``;`` or a tab; empty when unreadable."""
     layout: str
-    """``wide`` or ``long``."""
+    """``wide``, ``long``, ``pairs`` or ``one file per tag``."""
     heading_line: int
     unit_line: int | None
     columns: tuple[str, ...]

@@ -198,6 +198,16 @@ def _rejected_lines(finding: Finding, plant: Plant) -> Text:
     )
 
 
+def _lost_digits(finding: Finding, plant: Plant) -> Text:
+    first = finding.words.get("first", "")
+    return (
+        f"{many(finding, 'reading')} of the counter {finding.tag or 'of unknown name'} lost digits",
+        "They are written with an exponent and too few digits to see the counter move"
+        f"{f'; the first reads “{first}”' if first else ''} ({place(finding)}). They were not used.",
+        "Export the counter again from the logger: a file that was saved in a spreadsheet cannot be mended.",
+    )
+
+
 def _missing_export(finding: Finding, plant: Plant) -> Text:
     patterns = finding.words.get("files", "")
     return (
@@ -219,5 +229,6 @@ WRITERS: dict[FindingCode, Callable[[Finding, Plant], Text]] = {
     FindingCode.UNREADABLE_FILE: _unreadable_file,
     FindingCode.INCOMPLETE_LINE: _incomplete_line,
     FindingCode.REJECTED_LINES: _rejected_lines,
+    FindingCode.LOST_DIGITS: _lost_digits,
     FindingCode.MISSING_EXPORT: _missing_export,
 }
