@@ -102,7 +102,7 @@ def test_gas_volume_at_its_reference_state(pressure: str, air_Pa: float, printed
 
 
 def test_a_pressure_that_goes_over_to_absolute():
-    """Gauge until a date and absolute from then on: each tick by what holds at its start, as printed above."""
+    """Gauge until a date and absolute from then on: each tick by what holds at its start."""
     settings = gas_plant(
         make_fuel(heating_value(KWH_PER_M3)),
         OPERATING,
