@@ -25,7 +25,7 @@ from metering_factory import (
 from auditor.metering import MeteringSettings, meter
 from auditor.records.findings import FindingCode
 from auditor.records.machines import GasVolume, LiquidFuel, Role, Running, SameAs
-from auditor.records.plant import AirPressure, Fuel, GasMeter
+from auditor.records.plant import AirPressure, Fuel, GasMeter, TagChange
 
 RUNNING = Running("volume", 0.0, None)
 AT_STATE = GasMeter("meter", "already at the fuel's state", None, None, None)
@@ -99,6 +99,23 @@ def test_gas_volume_at_its_reference_state(pressure: str, air_Pa: float, printed
     table, _ = meter(gas_ticks(), settings)
     assert stream_W(table, "engine.gas") / 1e3 == pytest.approx(printed, abs=0.006)
     assert "barometer" not in table.inputs["engine.gas"]
+
+
+def test_a_pressure_that_goes_over_to_absolute():
+    """Gauge until a date and absolute from then on: each tick by what holds at its start."""
+    settings = gas_plant(
+        make_fuel(heating_value(KWH_PER_M3)),
+        OPERATING,
+        air_pressure=AirPressure(None, assumed("site.air_pressure", 101_325.0)),
+    )
+    gauge = settings.tags["pressure"]
+    then = TagChange(START_US + TICK_US, "then", replace(gauge, pressure="absolute"), False)
+    tags = {**settings.tags, "pressure": replace(gauge, changes=(then,))}
+    means = {
+        "volume": 100.0 * PER_HOUR, "pressure": 35_000.0, "temperature": 288.15, "barometer": 101_325.0,
+    }  # fmt: skip
+    table, _ = meter(make_ticks(means, ticks=2), replace(settings, tags=tags))
+    assert stream_W(table, "engine.gas") / 1e3 == pytest.approx([127.54, 32.74], abs=0.006)
 
 
 def test_a_barometer_stands_in_for_the_altitude():
