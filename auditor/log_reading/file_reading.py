@@ -3,26 +3,28 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
+from functools import partial
 from typing import IO, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
+from auditor.log_reading.ahead import in_order
 from auditor.log_reading.cells import cell_reader
+from auditor.log_reading.chunk_parsing import ChunkParser, ParsedChunk
 from auditor.log_reading.chunks import Chunk, read_chunks
 from auditor.log_reading.clocks import clock_of, second_passes
-from auditor.log_reading.decide import Cells, decide_long, decide_wide
+from auditor.log_reading.decide import Cells
 from auditor.log_reading.dialect import heading_key, split_fields
 from auditor.log_reading.encoding import as_ascii_like, codec_of_stream
-from auditor.log_reading.file_end import cut_end
 from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, reason_of
 from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
 from auditor.log_reading.recognition import RecognisedFile
-from auditor.log_reading.stamps import Stamps, Texts, read_stamps
-from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
+from auditor.log_reading.stamps import Stamps
+from auditor.log_reading.table import Columns, Learnt
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, Tag
 from auditor.records.samples import ReadingNote
@@ -38,11 +40,16 @@ class FileReader:
     ) -> None:
         self._file, self._export, self._window_us = file, export, window_us
         self._tags = [tags[name] for name in export.tags]
-        self._readers = [cell_reader(export, tag) for tag in self._tags]
-        numbers = number_columns(file.dialect)
-        self._shape = row_shape(file.dialect, export, numbers)
-        columns = file.dialect.columns
-        self._place = [numbers.index(columns[name]) if name in columns else None for name in export.tags]
+        numbers, columns = number_columns(file.dialect), file.dialect.columns
+        self._parser = ChunkParser(
+            dialect=file.dialect,
+            export=export,
+            codec=codec_of_stream(file.encoding),
+            shape=row_shape(file.dialect, export, numbers),
+            place=[numbers.index(columns[name]) if name in columns else None for name in export.tags],
+            tags=self._tags,
+            readers=[cell_reader(export, tag) for tag in self._tags],
+        )
         self._clock = clock_of(export.clock)
         self._learnt = Learnt()
         self._tally = Tally(file)
@@ -54,16 +61,17 @@ class FileReader:
         self._is_closed = False
         """A different heading row came up: what follows cannot be bound."""
 
-    def read(self) -> Iterator[Piece | ReadingNote]:
-        """Give the rows of the file chunk by chunk, then its note."""
+    def read(self, threads: int) -> Iterator[Piece | ReadingNote]:
+        """Give the rows of the file chunk by chunk, then its note; ``threads`` parse ahead."""
         stored, encoding = self._file.claim.stored, self._file.encoding
         digest = ""
         try:
             with open_stored(stored) as opened:
                 stream = _Hashing(opened) if stored.is_plain else opened
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
-                for chunk in read_chunks(text, codec_of_stream(encoding)):
-                    yield from self._chunk(chunk)
+                for parsed in in_order(self._jobs(read_chunks(text)), threads):
+                    self._learnt = self._learnt.joined(parsed.columns.learnt)
+                    yield from self._chunk(parsed)
                 if isinstance(stream, _Hashing):
                     digest = stream.sha256.hexdigest()
         except READ_ERRORS as error:
@@ -83,32 +91,32 @@ class FileReader:
         )
         tally.findings.append(finding)
 
-    def _chunk(self, chunk: Chunk) -> Iterator[Piece]:
-        tally, dialect = self._tally, self._file.dialect
-        tally.strays += chunk.strays
-        data = self._carried + chunk.data
-        self._carried = b""
-        if chunk.first_line == 1:
-            head = min(dialect.first_data_line - 1, data.count(b"\n"))
-            data = without_lines(data, head)
-            tally.skipped, tally.lines = head, head
-        if chunk.is_last:
-            end = cut_end(data, dialect, self._export)
-            data = end.body
-        columns, stamps, texts = self._parse(data)
-        if not chunk.is_last and not self._is_closed:
-            at = self._open_hour(stamps, columns)
+    def _jobs(self, chunks: Iterator[Chunk]) -> Iterator[Callable[[], ParsedChunk]]:
+        for chunk in chunks:
+            yield partial(self._parser.parse, chunk, self._learnt)
+
+    def _chunk(self, parsed: ParsedChunk) -> Iterator[Piece]:
+        tally = self._tally
+        tally.strays += parsed.strays
+        if self._carried:
+            text = self._carried + parsed.text
+            parsed = self._parser.parse_text(parsed.chunk, text, 0, self._learnt)
+            self._carried = b""
+        tally.skipped += parsed.head_lines
+        tally.lines += parsed.head_lines
+        if parsed.end is None and not self._is_closed:
+            at = self._open_hour(parsed.stamps, parsed.columns)
             if at is not None:
-                self._carried = without_lines(data, at)
-                data = data[: len(data) - len(self._carried)]
-                columns, stamps, texts = self._parse(data)
-        first_line = tally.lines + 1
-        tally.lines += columns.lines
+                self._carried = without_lines(parsed.data, at)
+                parsed = self._parser.without_tail(parsed, self._carried, self._learnt)
+        first_line, lines = tally.lines + 1, parsed.columns.lines
+        tally.lines += lines
         if self._is_closed:
-            tally.reject_line(first_line, "", columns.lines)
-        elif columns.lines:
-            yield from self._rows(columns, stamps, texts, first_line)
-        if chunk.is_last:
+            tally.reject_line(first_line, "", lines)
+        elif lines:
+            yield from self._rows(parsed, first_line)
+        end = parsed.end
+        if end is not None:
             tally.footer = end.footer
             tally.skipped += end.footer_lines
             tally.lines += end.footer_lines
@@ -130,15 +138,10 @@ class FileReader:
             )
         )
 
-    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
-        columns = read_columns(data, self._shape, self._learnt)
-        self._learnt = columns.learnt
-        texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        return columns, read_stamps(texts, self._export.date_order), texts
-
     def _open_hour(self, stamps: Stamps, columns: Columns) -> int | None:
         """First line of a repeated hour that reaches the end of the chunk: its passes may go on."""
-        if self._export.repeated_hour == "drop" or not stamps.good.any():
+        never_repeats = self._clock.low_us.size == 0
+        if never_repeats or self._export.repeated_hour == "drop" or not stamps.good.any():
             return None
         _, second_us, _ = to_instants(stamps, self._clock)
         inside = stamps.good & (second_us > 0)
@@ -147,9 +150,11 @@ class FileReader:
         hours = np.flatnonzero(inside[tail:])
         return int(columns.line[tail + hours[0]]) if hours.size else None
 
-    def _rows(self, columns: Columns, stamps: Stamps, texts: list[Texts], first_line: int) -> Iterator[Piece]:
+    def _rows(self, parsed: ParsedChunk, first_line: int) -> Iterator[Piece]:
         tally, dialect = self._tally, self._file.dialect
-        cells = self._decide(columns)
+        columns, stamps, cells = parsed.columns, parsed.stamps, parsed.cells
+        for name, count in parsed.unknown.items():
+            tally.unclaimed[name] = tally.unclaimed.get(name, 0) + count
         line = first_line + columns.line
         instants_us, fate = self._instants(stamps, cells, line)
         closed_at = self._look_at_odd_lines(columns, stamps, fate, first_line)
@@ -158,7 +163,7 @@ class FileReader:
         dated = (fate == Fate.GOOD) | (fate == Fate.OUTSIDE)
         self._see(instants_us, line, dated, cells)
         bad = np.flatnonzero(fate == Fate.BAD_STAMP)
-        bad_stamps = [" ".join(column.at(row) for column in texts) for row in bad.tolist()]
+        bad_stamps = [" ".join(column.at(row) for column in parsed.texts) for row in bad.tolist()]
         unreadable = ~stamps.good[bad]
         if unreadable.any():
             first = int(np.argmax(unreadable))
@@ -174,15 +179,6 @@ class FileReader:
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
         if piece.instants_us.size or piece.rejected.any():
             yield piece
-
-    def _decide(self, columns: Columns) -> Cells:
-        sentinels = self._export.sentinels
-        if not self._file.dialect.is_long:
-            return decide_wide(columns, self._place, self._readers, sentinels)
-        cells, unknown = decide_long(columns, [tag.column for tag in self._tags], self._readers, sentinels)
-        for name, count in unknown.items():
-            self._tally.unclaimed[name] = self._tally.unclaimed.get(name, 0) + count
-        return cells
 
     def _instants(
         self, stamps: Stamps, cells: Cells, line: NDArray[np.int64]

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from auditor.log_reading.ahead import one_ahead, usable_threads
 from auditor.log_reading.file_reading import FileReader
 from auditor.log_reading.merge import ALWAYS, NEVER, Source, merge
 from auditor.log_reading.notes import unread_note, with_late_rows
 from auditor.log_reading.pieces import Piece
 from auditor.log_reading.recognition import RecognisedFile, Recognition
-from auditor.records.plant import Export
 from auditor.records.samples import ReadingNote, SampleBlock
 
 _SLACK_US = 3 * 3_600_000_000
@@ -17,7 +17,7 @@ _SLACK_US = 3 * 3_600_000_000
 
 
 def read_export(
-    recognition: Recognition, export_name: str, window_us: tuple[int, int]
+    recognition: Recognition, export_name: str, window_us: tuple[int, int], threads: int | None = None
 ) -> Iterator[SampleBlock | ReadingNote]:
     """Read the files of one export that meet a stretch of time.
 
@@ -29,6 +29,9 @@ def read_export(
         Name of the export.
     window_us : tuple of int
         Half-open stretch, UTC microseconds. Rows outside are counted, not handed on.
+    threads : int, optional
+        Threads that read ahead while the caller works on a block; 1: none. Without it, one for each core.
+        What is read is the same for any number.
 
     Yields
     ------
@@ -41,21 +44,30 @@ def read_export(
     Memory is that of a few chunks, plus the stretch over which files overlap, plus the whole of a
     file whose rows are not in order.
     """
+    threads = usable_threads() if threads is None else threads
+    yield from one_ahead(_read(recognition, export_name, window_us, threads), threads)
+
+
+def _read(
+    recognition: Recognition, export_name: str, window_us: tuple[int, int], threads: int
+) -> Iterator[SampleBlock | ReadingNote]:
     export = recognition.exports[export_name]
     sources = []
     for file in recognition.files[export_name]:
         if file.lies_outside(window_us):
             yield unread_note(file, export_name)
         else:
-            sources.append(_source(file, recognition, export, window_us))
+            sources.append(_source(file, recognition, window_us, threads))
     yield from merge(sources, export, with_late_rows)
 
 
 def _source(
-    file: RecognisedFile, recognition: Recognition, export: Export, window_us: tuple[int, int]
+    file: RecognisedFile, recognition: Recognition, window_us: tuple[int, int], threads: int
 ) -> Source:
+    export = recognition.exports[file.claim.export]
+
     def read() -> Iterator[Piece | ReadingNote]:
-        return FileReader(file, export, recognition.tags, window_us).read()
+        return FileReader(file, export, recognition.tags, window_us).read(threads)
 
     margin_us = 0 if file.is_whole else _SLACK_US
     slack_us = margin_us if file.is_ordered else NEVER

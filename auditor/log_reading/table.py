@@ -53,6 +53,10 @@ class Learnt:
     wordy: frozenset[int] = frozenset()
     """Number columns with too many different texts: they are read as text throughout."""
 
+    def joined(self, other: Learnt) -> Learnt:
+        """Return what both know."""
+        return Learnt(self.words | other.words, self.wordy | other.wordy)
+
 
 @dataclass(frozen=True)
 class Ragged:
