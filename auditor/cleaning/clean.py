@@ -71,6 +71,8 @@ def clean(
             view = View(rows, export, [tally.tag for tally in own], grid)
             for tally in own:
                 tally.absorb(view, book)
+            # Not to be held while the next rows are waited for.
+            del rows, view
     for tally in tallies.values():
         tally.finish(book)
     frozen = take_out_frozen(tallies, settings, book)

@@ -41,14 +41,13 @@ def read_chunks(stream: IO[bytes]) -> Iterator[Chunk]:
         block = stream.read(CHUNK)
         if not block:
             break
-        data = rest + block if rest else block
-        end = _last_line_end(data)
+        end = _last_line_end(block)
         if end == 0:
-            if len(data) > _LONGEST_LINE:
+            rest += block
+            if len(rest) > _LONGEST_LINE:
                 raise UnreadableError("no line ends: this is not text")
-            rest = data
             continue
-        whole, rest = data[:end], data[end:]
+        whole, rest = b"".join((rest, memoryview(block)[:end])), block[end:]
         if held is not None and len(block) < CHUNK // 4:
             # The file ends here: its last chunk must be long enough to hold a whole footer.
             held += whole

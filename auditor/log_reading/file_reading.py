@@ -24,7 +24,7 @@ from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
 from auditor.log_reading.recognition import RecognisedFile
 from auditor.log_reading.stamps import Stamps
-from auditor.log_reading.table import Columns, Learnt
+from auditor.log_reading.table import Columns, Learnt, line_ends
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, Tag
 from auditor.records.samples import ReadingNote
@@ -71,7 +71,11 @@ class FileReader:
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
                 for parsed in in_order(self._jobs(read_chunks(text)), threads):
                     self._learnt = self._learnt.joined(parsed.columns.learnt)
-                    yield from self._chunk(parsed)
+                    piece = self._chunk(parsed)
+                    # Its lines must not lie in memory until the rows have been worked on.
+                    del parsed
+                    if piece is not None:
+                        yield piece
                 if isinstance(stream, _Hashing):
                     digest = stream.sha256.hexdigest()
         except READ_ERRORS as error:
@@ -95,7 +99,7 @@ class FileReader:
         for chunk in chunks:
             yield partial(self._parser.parse, chunk, self._learnt)
 
-    def _chunk(self, parsed: ParsedChunk) -> Iterator[Piece]:
+    def _chunk(self, parsed: ParsedChunk) -> Piece | None:
         tally = self._tally
         tally.strays += parsed.strays
         if self._carried:
@@ -109,12 +113,12 @@ class FileReader:
             if at is not None:
                 self._carried = without_lines(parsed.data, at)
                 parsed = self._parser.without_tail(parsed, self._carried, self._learnt)
-        first_line, lines = tally.lines + 1, parsed.columns.lines
+        piece, first_line, lines = None, tally.lines + 1, parsed.columns.lines
         tally.lines += lines
         if self._is_closed:
             tally.reject_line(first_line, "", lines)
         elif lines:
-            yield from self._rows(parsed, first_line)
+            piece = self._rows(parsed, first_line)
         end = parsed.end
         if end is not None:
             tally.footer = end.footer
@@ -122,6 +126,7 @@ class FileReader:
             tally.lines += end.footer_lines
             if end.torn is not None:
                 self._hold_back(end.torn)
+        return piece
 
     def _hold_back(self, text: str) -> None:
         tally = self._tally
@@ -150,7 +155,7 @@ class FileReader:
         hours = np.flatnonzero(inside[tail:])
         return int(columns.line[tail + hours[0]]) if hours.size else None
 
-    def _rows(self, parsed: ParsedChunk, first_line: int) -> Iterator[Piece]:
+    def _rows(self, parsed: ParsedChunk, first_line: int) -> Piece | None:
         tally, dialect = self._tally, self._file.dialect
         columns, stamps, cells = parsed.columns, parsed.stamps, parsed.cells
         for name, count in parsed.unknown.items():
@@ -177,8 +182,7 @@ class FileReader:
         for place in dialect.unclaimed:
             tally.unclaimed[dialect.headings[place]] += int(dated.sum()) + bad.size
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
-        if piece.instants_us.size or piece.rejected.any():
-            yield piece
+        return piece if piece.instants_us.size or piece.rejected.any() else None
 
     def _instants(
         self, stamps: Stamps, cells: Cells, line: NDArray[np.int64]
@@ -294,7 +298,7 @@ def _digest(file: RecognisedFile) -> str:
 def _line_texts(data: bytes, wanted: NDArray[np.int64]) -> list[str]:
     if not wanted.size:
         return []
-    ends = np.flatnonzero(np.frombuffer(data, np.uint8) == 10)
+    ends = line_ends(data) - 1
     starts = np.concatenate([[0], ends[:-1] + 1])
     spans = zip(starts[wanted].tolist(), ends[wanted].tolist(), strict=True)
     return [data[start:end].decode("utf-8", "replace") for start, end in spans]
