@@ -213,7 +213,8 @@ def compare(shape: str, path: Path, days: int, rounds: int) -> None:
         ratios = [row["wall"] / middle[bare]["wall"] for bare in WORKS[:2]]
         print(
             f"{work:8} {row['wall']:7.2f} {min(run['wall'] for run in runs[work]):7.2f} {row['cpu']:7.2f}"
-            f" {size / row['wall']:5.0f} {row['rss']:8.0f} {row['other']:6.2f} {ratios[0]:10.2f} {ratios[1]:10.2f}"
+            f" {size / row['wall']:5.0f} {row['rss']:8.0f} {row['other']:6.2f}"
+            f" {ratios[0]:10.2f} {ratios[1]:10.2f}"
         )
     print(f"two cores over one: {middle['audit 1']['wall'] / middle['audit 2']['wall']:.2f} x", flush=True)
 

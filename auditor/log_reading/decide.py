@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 
 from auditor.log_reading.cells import CellReader, shortest
 from auditor.log_reading.dialect import heading_key
+from auditor.log_reading.long_layout import rows_by_tag
 from auditor.log_reading.table import Columns, distinct
 from auditor.records.samples import Disposition
 
@@ -79,8 +80,7 @@ def decide_long(
     rows, texts = columns.words[0]
     index, words = (rows, []) if texts is None else distinct(texts)
     found = _Rejected()
-    for tag, reader in enumerate(readers):
-        own = np.flatnonzero(tag_of_row == tag)
+    for tag, (own, reader) in enumerate(zip(rows_by_tag(tag_of_row, len(names)), readers, strict=True)):
         part = values[0, own]
         mine = np.flatnonzero(tag_of_row[rows] == tag)
         decided = _decide(part, (np.searchsorted(own, rows[mine]), index[mine], words), reader, sentinels)

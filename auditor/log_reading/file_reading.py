@@ -19,6 +19,7 @@ from auditor.log_reading.decide import Cells
 from auditor.log_reading.dialect import heading_key, split_fields
 from auditor.log_reading.encoding import as_ascii_like, codec_of_stream
 from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, reason_of
+from auditor.log_reading.long_layout import rows_by_tag
 from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
@@ -264,11 +265,11 @@ class FileReader:
         self, instants_us: NDArray[np.int64], line: NDArray[np.int64], dated: NDArray[np.bool_], cells: Cells
     ) -> None:
         """Show the good stamps to the account, those of a long export tag by tag."""
-        groups = [(_NO_TAG, dated)]
+        groups = [(_NO_TAG, np.flatnonzero(dated))]
         if cells.tag_of_row is not None:
-            groups = [(tag, dated & (cells.tag_of_row == tag)) for tag in range(len(self._tags))]
-        for tag, chosen in groups:
-            rows = np.flatnonzero(chosen)
+            of_tag = rows_by_tag(cells.tag_of_row, len(self._tags))
+            groups = [(tag, rows[dated[rows]]) for tag, rows in enumerate(of_tag)]
+        for tag, rows in groups:
             if rows.size:
                 self._tally.see(instants_us[rows], line[rows], self._before.get(tag))
                 self._before[tag] = (int(line[rows[-1]]), int(instants_us[rows[-1]]))

@@ -22,6 +22,7 @@ from auditor.log_reading.stamps import Texts
 
 _BLOCK = 1 << 20
 """Block of the parser: it must fit the processor's second-level cache."""
+_PIECE = 1 << 18
 _NOT_A_NUMBER = re.compile(
     r"In CSV column #(\d+): .*?CSV conversion error to double: invalid value '(.*)'$", re.S
 )
@@ -102,7 +103,7 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
     Columns
         Rows and ragged lines together are all lines of the chunk.
     """
-    lines = data.count(b"\n")
+    lines = count_feeds(data)
     if lines == 0:
         nothing = np.zeros(0, np.int64)
         none = tuple((nothing, None) for _ in shape.numbers)
@@ -272,7 +273,7 @@ def _texts_of(
     for rows in missing:
         touched[rows] = True
     kept = np.flatnonzero(touched)
-    part = data if kept.size == line.size == data.count(b"\n") else _lines(data, line[kept])
+    part = data if kept.size == line.size == count_feeds(data) else _lines(data, line[kept])
     ragged: list[Ragged] = []
     narrow = replace(shape, texts=tuple(wanted), numbers=())
     table = _parse(part, narrow, (set(), set()), ragged, b'"' in part)
@@ -308,9 +309,16 @@ def _lines(data: bytes, wanted: NDArray[np.int64]) -> bytes:
 
 def line_ends(data: bytes) -> NDArray[np.int64]:
     """Return the place behind each line feed; looked for piece by piece, within the processor's cache."""
-    letters, step = np.frombuffer(data, np.uint8), 1 << 18
-    found = [np.flatnonzero(letters[at : at + step] == 10) + (at + 1) for at in range(0, len(data), step)]
+    letters = np.frombuffer(data, np.uint8)
+    places = range(0, len(data), _PIECE)
+    found = [np.flatnonzero(letters[at : at + _PIECE] == 10) + (at + 1) for at in places]
     return np.concatenate(found) if found else np.zeros(0, np.int64)
+
+
+def count_feeds(data: bytes) -> int:
+    """Count line feeds, many times faster than ``bytes.count`` where lines are short."""
+    letters = np.frombuffer(data, np.uint8)
+    return sum(int(np.count_nonzero(letters[at : at + _PIECE] == 10)) for at in range(0, len(data), _PIECE))
 
 
 def _with_sound_quotes(data: bytes, delimiter: str) -> tuple[bytes, bool]:
