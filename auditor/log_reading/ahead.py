@@ -15,7 +15,7 @@ from typing import TypeVar
 
 T = TypeVar("T")
 
-DEPTH = 3
+DEPTH = 2
 """Jobs taken before the result of the oldest of them is wanted; bounds the memory."""
 _MOST_THREADS = 3
 

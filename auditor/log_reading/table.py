@@ -130,6 +130,8 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
         line = np.delete(line, [bad.line for bad in ragged])
     texts = tuple(table.column(f"c{place}").combine_chunks() for place in shape.texts)
     values, missing = _matrix(table, shape)
+    # It holds the numbers once more.
+    del table
     cells = _texts_of(body, shape, line, missing)
     return Columns(body, line, texts, values, cells, tuple(ragged), lines, after)
 
