@@ -72,14 +72,12 @@ def nightly(sites: Iterable[Path], say: Say) -> list[SiteRun]:
 
 
 def _one_site(site: Path, say: Say) -> SiteRun:
-    name = site.name
+    name = site.resolve().name
     try:
         require_site(site)
         with locked(site / AUDIT):
             months = _changed_months(site, say)
-            append_run_log(
-                site / AUDIT, [f"{run.month} {run.action}, exit {int(run.status)}" for run in months]
-            )
+            append_run_log(site / AUDIT, [_log_line(run) for run in months])
     except AuditorError as error:
         say(f"{name}: {error}")
         _log_failure(site, f"failed, exit {int(error.exit_code)}: {error}")
@@ -113,6 +111,7 @@ def _log_failure(site: Path, line: str) -> None:
 
 
 def _changed_months(site: Path, say: Say) -> list[MonthRun]:
+    name = site.resolve().name
     opened = open_site(site)
     folder = opened.plant.folder
     digests = hash_files(folder / LOGS)
@@ -124,8 +123,8 @@ def _changed_months(site: Path, say: Say) -> list[MonthRun]:
     for label in labels:
         period = month_period(opened, label)
         if logged_us(opened, period) < _SHORTEST_DAY_US:
-            runs.append(MonthRun(site.name, label, "less than a day of logs", Exit.NO_DATA))
-            say(f"{site.name} {label}: less than a day of logs, left alone")
+            runs.append(MonthRun(name, label, "less than a day of logs", Exit.NO_DATA))
+            say(f"{name} {label}: less than a day of logs, left alone")
             continue
         key = content_key(opened, period, digests)
         before = past.get(label)
@@ -134,18 +133,18 @@ def _changed_months(site: Path, say: Say) -> list[MonthRun]:
             and before.content_key == key
             and _outputs_whole(folder / AUDIT / label, before.outputs)
         ):
-            runs.append(MonthRun(site.name, label, "unchanged", Exit(before.exit_code)))
-            say(f"{site.name} {label}: unchanged")
+            runs.append(MonthRun(name, label, "unchanged", Exit(before.exit_code)))
+            say(f"{name} {label}: unchanged")
             continue
         try:
             result = audit_period(opened, period)
         except NoDataError:
-            runs.append(MonthRun(site.name, label, "no data", Exit.NO_DATA))
-            say(f"{site.name} {label}: no usable data, nothing written")
+            runs.append(MonthRun(name, label, "no data", Exit.NO_DATA))
+            say(f"{name} {label}: no usable data, nothing written")
             continue
         publish_month(result, folder / AUDIT, key)
-        runs.append(MonthRun(site.name, label, "published", result.status))
-        say(f"{site.name} {label}: published, exit {int(result.status)}")
+        runs.append(MonthRun(name, label, "published", result.status))
+        say(f"{name} {label}: published, exit {int(result.status)}")
     publish_index(opened.plant.site.name, folder / AUDIT)
     return runs
 

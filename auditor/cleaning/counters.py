@@ -93,28 +93,32 @@ def sift(readings: Readings, rule: CounterRule, *, final: bool) -> Sifted:
 
 
 def _spikes(steps: _Steps) -> list[int]:
-    """Find the single readings that are off, as far as the readings after them tell."""
-    near = steps.believed(1)
-    doubtful = np.flatnonzero(~near[:-1]) + 1
+    """Find the single readings that are off, as far as the readings after them tell.
+
+    Each is judged from the last reading before it that stands, so that it does not matter whether spikes
+    before that one have been taken out already.
+    """
+    doubtful = np.flatnonzero(~steps.believed(1)[:-1]) + 1
     if not doubtful.size:
         return []
-    to_next, to_second, to_third = near.tolist(), steps.believed(2).tolist(), steps.believed(3).tolist()
+    to_second = steps.believed(2).tolist()
     spikes: list[int] = []
+    off: set[int] = set()
     for reading in doubtful.tolist():
         before = reading - 1
-        last_spike = spikes[-1] if spikes else -1
-        if last_spike == before:
+        if before in off:
             continue
-        if before >= 1:
-            if last_spike == before - 1:
-                rose = to_third[before - 2]
-            else:
-                rose = to_next[before - 1] and to_second[before - 1]
-            if rose and not to_second[before]:
+        base = before - 1
+        while base in off:
+            base -= 1
+        if base >= 0 and steps.believes(base, before) and steps.believes(base, reading):
+            if not to_second[before]:
                 spikes.append(before)
+                off.add(before)
                 continue
         if to_second[before]:
             spikes.append(reading)
+            off.add(reading)
     return spikes
 
 
@@ -136,6 +140,10 @@ class _Steps:
         if self.rule.full_scale is not None:
             rise = np.where(rise < 0.0, rise + self.rule.full_scale, rise)
         return np.where((rise >= 0.0) & (rise <= most), rise, np.nan)
+
+    def believes(self, start: int, stop: int) -> bool:
+        """Tell whether one step is believed."""
+        return not bool(np.isnan(self.amounts(np.array([start]), np.array([stop]))[0]))
 
     def believed(self, stride: int) -> NDArray[np.bool_]:
         """Tell for each reading whether the step to the one ``stride`` later is believed (none: False)."""
