@@ -181,7 +181,8 @@ class Tally:
         if judged.codes is None or used is None:
             return
         others = judged.codes[~used]
-        for kind in np.unique(others[others >= 0]).tolist():
+        others = others[others >= 0]
+        for kind in np.unique(others).tolist() if others.size else ():
             at = np.flatnonzero(judged.codes == kind)
             book.enter(self.tag.name, Disposition(kind), cells, at)
 
