@@ -89,11 +89,17 @@ class CellBook:
     ) -> None:
         """Enter numbers of one tag in order of time: those ``at`` some places, or all."""
         count = len(cells) if at is None else at.size
-        if not count:
-            return
+        if count:
+            ends = (0, -1) if at is None else (int(at[0]), int(at[-1]))
+            self.enter_stretch(tag, disposition, cells, count, ends)
+
+    def enter_stretch(
+        self, tag: str, disposition: Disposition, cells: Cells, count: int, ends: tuple[int, int]
+    ) -> None:
+        """Enter so many numbers of one tag, of which the first and the last stand at ``ends``."""
         self.counts[self.place[tag], disposition] += count
-        for end in (0, -1):
-            self._keep(tag, disposition, self.example(cells, end if at is None else int(at[end])))
+        for end in ends:
+            self._keep(tag, disposition, self.example(cells, end))
 
     def example(self, cells: Cells, at: int) -> Example:
         """Return one of the cells as an example."""

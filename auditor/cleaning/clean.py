@@ -76,6 +76,8 @@ def clean(
             view = View(rows, export, own_tags, grid)
             for tally in own:
                 tally.absorb(view, book, doubts.get(tally.tag.name))
+            # Not to be held while the next rows are waited for.
+            del rows, view
     for tally in tallies.values():
         tally.finish(book)
     zeros = take_out_zeros(tallies, book)

@@ -72,8 +72,8 @@ def extend_runs(
     if at_least_us is None:
         chosen = np.unique([0, starts.size - 1])
     else:
-        instants = cells.instants_us if good is None else cells.instants_us[good]
-        lasting = instants[ends] - instants[starts] >= at_least_us
+        first, last = (starts, ends) if good is None else (good[starts], good[ends])
+        lasting = cells.instants_us[last] - cells.instants_us[first] >= at_least_us
         lasting[0] = lasting[-1] = True
         chosen = np.flatnonzero(lasting)
     runs = [run(int(starts[index]), int(ends[index])) for index in chosen]

@@ -9,7 +9,6 @@ import numpy as np
 
 from auditor.cleaning.dated import rows_by_stretch, stamp_shift_us
 from auditor.cleaning.repeats import one_event_per_stamp, resolve
-from auditor.cleaning.rows import NO_ROWS
 from auditor.records.samples import Disposition
 
 if TYPE_CHECKING:
@@ -132,8 +131,9 @@ def _distrusted_rows(
     return found
 
 
-def rows_where(mask: NDArray[np.bool_] | None, count: int) -> NDArray[np.intp]:
-    """Return the rows of a mask, all of ``count`` when it is None."""
+def ends_of(mask: NDArray[np.bool_] | None, count: int) -> tuple[int, int] | None:
+    """Return the first and last row of a mask, of all ``count`` when it is None; None when it is empty."""
     if mask is None:
-        return np.arange(count)
-    return np.flatnonzero(mask) if mask.any() else NO_ROWS
+        return (0, count - 1) if count else None
+    first = int(np.argmax(mask)) if count else 0
+    return (first, count - 1 - int(np.argmax(mask[::-1]))) if count and mask[first] else None

@@ -53,6 +53,8 @@ def screened(
     if not tests:
         for piece in pieces:
             yield piece, {}
+            # Not to be held while the next one is waited for.
+            del piece
         return
     waiting: Rows | None = None
     for piece in pieces:

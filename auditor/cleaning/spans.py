@@ -43,33 +43,59 @@ class Spans:
 
 def cut(start_us: NDArray[np.int64], end_us: NDArray[np.int64], grid: Grid) -> Spans:
     """Cut stretches ``[start, end)``, disjoint and in order of time, at the edges of the grid's ticks."""
-    origin, tick_us = grid.period.start_us, grid.tick_s * MICROSECONDS
-    low = np.maximum(start_us, origin)
-    high = np.minimum(end_us, grid.period.end_us)
-    inside_us = np.maximum(high - low, 0)
-    kept = np.flatnonzero(inside_us)
-    if kept.size < inside_us.size:
+    period = grid.period
+    low, high, kept = start_us, end_us, None
+    whole_us = inside_us = end_us - start_us
+    if not low.size or low[0] < period.start_us or high[-1] > period.end_us or inside_us.min() <= 0:
+        low, high = np.maximum(start_us, period.start_us), np.minimum(end_us, period.end_us)
+        inside_us = np.maximum(high - low, 0)
+        kept = np.flatnonzero(inside_us)
         low, high = low[kept], high[kept]
-    tick = (low - origin) // tick_us
-    pieces = (high - 1 - origin) // tick_us - tick + 1
-    whole = kept.size == inside_us.size and np.array_equal(inside_us, end_us - start_us)
-    if whole and (pieces == 1).all():
+    if not low.size:
+        none, nothing = np.zeros(0, dtype=np.intp), np.zeros(0)
+        return Spans(inside_us, none, none, nothing, nothing, none, none, none)
+    # Ticks are few and stretches many: the edges of ticks are looked up among the stretches.
+    tick_us = grid.tick_s * MICROSECONDS
+    first, last = (int(low[0]) - period.start_us) // tick_us, (int(high[-1]) - 1 - period.start_us) // tick_us
+    ticks = np.arange(first, last + 1)
+    edges = period.start_us + ticks[1:] * tick_us
+    after = np.searchsorted(low, edges, side="left")
+    is_cut = high[after - 1] > edges
+    starts = after + np.cumsum(is_cut) - is_cut
+    of: NDArray[np.intp] | None
+    if kept is None and not is_cut.any():
         of, position, length = None, None, inside_us
     else:
-        rank = np.repeat(np.arange(kept.size), pieces)
-        tick = tick[rank] + np.arange(rank.size) - np.repeat(np.cumsum(pieces) - pieces, pieces)
-        edge = origin + tick * tick_us
-        of = kept[rank]
-        piece_low = np.maximum(low[rank], edge)
-        piece_high = np.minimum(high[rank], edge + tick_us)
-        length = piece_high - piece_low
-        begin = start_us[of]
-        position = (piece_low - begin + piece_high - begin) / (2.0 * (end_us[of] - begin))
-    first_piece = np.flatnonzero(np.diff(tick, prepend=-1))
-    covered = np.add.reduceat(length, first_piece) if length.size else length
-    return Spans(
-        inside_us, of, length, length.astype(np.float64), position, first_piece, tick[first_piece], covered
-    )
+        of, piece_low, length = _pieces(low, high, starts[is_cut], edges[is_cut])
+        of = of if kept is None else kept[of]
+        position = np.full(of.size, 0.5)
+        part = np.flatnonzero(length != whole_us[of])
+        begin = start_us[of[part]]
+        ahead = piece_low[part] - begin
+        position[part] = (ahead + ahead + length[part]) / (2.0 * whole_us[of[part]])
+    first_piece = np.append(0, starts)
+    touched = np.append(first_piece[1:], length.size) > first_piece
+    first_piece, ticks = first_piece[touched], ticks[touched]
+    covered = np.add.reduceat(length, first_piece)
+    return Spans(inside_us, of, length, length.astype(np.float64), position, first_piece, ticks, covered)
+
+
+def _pieces(
+    low: NDArray[np.int64], high: NDArray[np.int64], new: NDArray[np.intp], edges: NDArray[np.int64]
+) -> tuple[NDArray[np.intp], NDArray[np.int64], NDArray[np.int64]]:
+    """Cut stretches at edges; ``new`` are the places that the pieces behind the edges get.
+
+    Returns the stretch, the start and the length of each piece.
+    """
+    if not new.size:
+        return np.arange(low.size), low, high - low
+    behind = np.zeros(low.size + new.size, dtype=np.intp)
+    behind[new] = 1
+    of = np.arange(behind.size) - np.cumsum(behind)
+    piece_low, piece_high = low[of], high[of]
+    piece_low[new] = edges
+    piece_high[new - 1] = edges
+    return of, piece_low, piece_high - piece_low
 
 
 def add_constant(

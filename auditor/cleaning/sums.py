@@ -58,10 +58,9 @@ class Sums:
         ndarray or None
             Stretches that are covered; None: all.
         """
-        near = np.diff(chain.instants_us) <= self.hold_us
-        covered, rejected = self._sides(chain, near)
+        covered, rejected = self._sides(chain)
         if rejected is not None:
-            self.rejected_us += int(spans.inside_us[rejected].sum())
+            self.rejected_us += int(spans.inside_us[np.flatnonzero(rejected)].sum())
         bad = np.zeros(0, dtype=np.intp) if covered is None else np.flatnonzero(~covered)
         if self.tag.between == "line":
             add_line(spans, chain.values, bad, self.integral[0])
@@ -158,17 +157,18 @@ class Sums:
         inside = np.minimum(end_us, period.end_us) - np.maximum(start_us, period.start_us)
         self.rejected_us += int(np.maximum(inside, 0).sum())
 
-    def _sides(
-        self, chain: Chain, near: NDArray[np.bool_]
-    ) -> tuple[NDArray[np.bool_] | None, NDArray[np.bool_] | None]:
+    def _sides(self, chain: Chain) -> tuple[NDArray[np.bool_] | None, NDArray[np.bool_] | None]:
         """Tell which stretches are covered (None: all) and which rejected (None: none)."""
         between = self.tag.between
         held = between in ("step", "state")
+        if chain.good is None and held:
+            return None, None
+        if chain.good is not None and held:
+            return chain.good[:-1], ~chain.good[:-1]
+        near = np.diff(chain.instants_us) <= self.hold_us
         if chain.good is None:
-            return (None if held or near.all() else near), None
+            return (None if near.all() else near), None
         left, right = chain.good[:-1], chain.good[1:]
-        if held:
-            return left, ~left
         if between == "line":
             return left & right & near, ~left | (~right & near)
         owner = right if self.tag.stamp_marks == "end" else left

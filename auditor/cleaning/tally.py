@@ -14,7 +14,7 @@ from auditor.cleaning.dated import stamp_shift_us
 from auditor.cleaning.equal_runs import EqualRun, extend_runs
 from auditor.cleaning.events import Event, EventLog
 from auditor.cleaning.impossible_zeros import zero_marks
-from auditor.cleaning.judge import Judged, judge, rows_where
+from auditor.cleaning.judge import Judged, ends_of, judge
 from auditor.cleaning.range_ends import range_end_marks
 from auditor.cleaning.spans import cut
 from auditor.cleaning.sums import Isolated, Sums
@@ -78,10 +78,10 @@ class Tally:
         self._enter(view, judged, cells, book)
         if judged.resolved is not None:
             self.conflicts += conflicts_of(view, judged.resolved, cells, self.sums.hold_us, self.tag)
-        rows = rows_where(judged.event, len(cells))
-        if not rows.size:
+        ends = ends_of(judged.event, len(cells))
+        if ends is None:
             return
-        self._forget_carry_read_again(int(view.rows.instants_us[rows[0]]), judged, int(rows[0]))
+        self._forget_carry_read_again(int(view.rows.instants_us[ends[0]]), judged, ends[0])
         events = view.events(judged.event, None if self.log.last is None else self.log.last.instant_us)
         self.log.note(events)
         good = None if judged.good is None else np.flatnonzero(judged.good)
@@ -91,7 +91,7 @@ class Tally:
         else:
             self._reject_between(self.counter, events, self._goodness(judged, len(cells)))
             self._settle(self.counter, cells if good is None else cells.take(good), book, final=False)
-        self.log.last = self._last_event(cells, judged, int(rows[-1]), book)
+        self.log.last = self._last_event(cells, judged, ends[1], book)
 
     def finish(self, book: CellBook) -> None:
         """Close the last stretch, and settle what waited for later samples or the native step."""
@@ -175,28 +175,29 @@ class Tally:
 
     def _enter(self, view: View, judged: Judged, cells: Cells, book: CellBook) -> None:
         """Enter the numbers of a piece in the ledger of cells; a counter's used ones wait to be settled."""
-        if judged.codes is None:
-            kinds = [int(Disposition.USED)]
-        else:
-            kinds = np.flatnonzero(np.bincount(judged.codes + 1, minlength=1)[1:]).tolist()
-        for kind in kinds:
-            if kind == Disposition.USED and self.counter is not None:
-                continue
-            at = None if judged.codes is None else np.flatnonzero(judged.codes == kind)
+        used = None if judged.codes is None else judged.codes == Disposition.USED
+        if self.counter is None:
+            ends = ends_of(used, len(cells))
+            if ends is not None:
+                count = len(cells) if used is None else int(np.count_nonzero(used))
+                book.enter_stretch(self.tag.name, Disposition.USED, cells, count, ends)
+                self._count_samples(view, used)
+        if judged.codes is None or used is None:
+            return
+        others = judged.codes[~used]
+        others = others[others >= 0]
+        for kind in np.unique(others).tolist() if others.size else ():
+            at = np.flatnonzero(judged.codes == kind)
             book.enter(self.tag.name, Disposition(kind), cells, at)
-            if kind == Disposition.USED:
-                self._count_samples(view, judged)
 
-    def _count_samples(self, view: View, judged: Judged) -> None:
+    def _count_samples(self, view: View, used: NDArray[np.bool_] | None) -> None:
         counts = view.tick_counts(stamp_shift_us(self.tag))
         if not counts.ticks.size:
             return
-        used = np.ones(view.rows.instants_us.size, dtype=np.int32)
-        if judged.codes is not None:
-            used = (judged.codes == Disposition.USED).astype(np.int32)
-        if counts.inside is not None:
-            used = used[counts.inside]
-        self.sums.samples[counts.ticks] += np.add.reduceat(used, counts.first_row)
+        if used is None:
+            used = np.ones(view.rows.instants_us.size, dtype=np.bool_)
+        inside = used if counts.inside is None else used[counts.inside]
+        self.sums.samples[counts.ticks] += np.add.reduceat(inside, counts.first_row, dtype=np.int32)
 
     def _forget_carry_read_again(self, first_us: int, judged: Judged, row: int) -> None:
         """Drop what was handed over when the same sample is read again."""

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -20,6 +20,10 @@ if TYPE_CHECKING:
     from auditor.cleaning.rows import Rows
     from auditor.records.period import Grid
     from auditor.records.plant import Export, Tag
+
+
+_KEPT = 6
+"""Sets of events, and of stretches, that are kept for the tags that follow."""
 
 
 @dataclass(frozen=True)
@@ -64,7 +68,7 @@ class View:
                 self.numbers[row, 1:][stretch] = then.scale * rows.raw[row, stretch] + then.offset
         self.repeats = find_repeats(rows.instants_us, rows.pattern, export.when_stamps_repeat)
         self._events: dict[tuple[bytes, int | None], Events] = {}
-        self._spans: dict[tuple[int, int], Spans] = {}
+        self._spans: dict[tuple[int, int], tuple[Events, Spans]] = {}
         self._counts: dict[int, TickCounts] = {}
 
     def events(self, chosen: NDArray[np.bool_] | None, before_us: int | None) -> Events:
@@ -75,6 +79,7 @@ class View:
             if before_us is not None:
                 instants = np.concatenate((np.array([before_us], dtype=np.int64), instants))
             distance = np.diff(instants)
+            _keep_few(self._events)
             self._events[key] = Events(instants, distance, _spacing(distance))
         return self._events[key]
 
@@ -83,8 +88,11 @@ class View:
         key = (id(events), hold_us)
         if key not in self._spans:
             start = events.instants_us[:-1]
-            self._spans[key] = cut(start, start + np.minimum(events.distance_us, hold_us), self.grid)
-        return self._spans[key]
+            _keep_few(self._spans)
+            spans = cut(start, start + np.minimum(events.distance_us, hold_us), self.grid)
+            # With its events, so that no others can get their identity meanwhile.
+            self._spans[key] = (events, spans)
+        return self._spans[key][1]
 
     def tick_counts(self, shift_us: int) -> TickCounts:
         """Return the ticks of all rows, their stamps moved back by ``shift_us``."""
@@ -96,6 +104,12 @@ class View:
             first = np.flatnonzero(np.diff(tick, prepend=-1))
             self._counts[shift_us] = TickCounts(None if inside.all() else inside, first, tick[first])
         return self._counts[shift_us]
+
+
+def _keep_few(store: dict[Any, Any]) -> None:
+    """Make room for one more: tags share what all or neighbouring ones need, the rest is used once."""
+    while len(store) >= _KEPT:
+        del store[next(iter(store))]
 
 
 def _spacing(distance_us: NDArray[np.int64]) -> tuple[NDArray[np.int64], NDArray[np.int64]]:

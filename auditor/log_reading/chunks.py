@@ -1,4 +1,4 @@
-"""A file as chunks of whole lines, in UTF-8, with the number of the first line of each."""
+"""A file as chunks of whole lines."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from typing import IO
 
 from auditor.log_reading.encoding import to_utf8
 from auditor.log_reading.listing import UnreadableError
-from auditor.log_reading.samples import count_lines, line_feeds
+from auditor.log_reading.samples import line_feeds
 
 CHUNK = 8 << 20
 """Bytes of a chunk: large against the cost of a call, small against memory."""
@@ -17,47 +17,50 @@ _LONGEST_LINE = 32 << 20
 
 @dataclass(frozen=True)
 class Chunk:
-    """Whole lines of a file, each ended by a line feed (the last perhaps by nothing)."""
+    """Whole lines of a file as they stand there, the last of all perhaps without an end."""
 
     data: bytes
-    first_line: int
+    is_first: bool
     is_last: bool
-    strays: int = 0
-    """Bytes that had no meaning in the encoding."""
+
+    def text(self, codec: str) -> tuple[bytes, int]:
+        """Return the lines in UTF-8, each ended by a line feed or the pair, and the number of stray bytes.
+
+        Carriage returns that stand alone are turned into line feeds, so that whoever reads a chunk meets
+        line feeds or pairs only. Stray bytes are those without a meaning in the encoding.
+        """
+        text, strays = to_utf8(self.data, codec)
+        return line_feeds(text), strays
 
 
-def read_chunks(stream: IO[bytes], codec: str, size: int | None = None) -> Iterator[Chunk]:
+def read_chunks(stream: IO[bytes], size: int | None = None) -> Iterator[Chunk]:
     """Cut a stream at line ends, by default into pieces of ``CHUNK`` bytes.
 
-    Line feed, carriage return and the pair end a line; where carriage returns stand alone they are
-    turned into line feeds, so that whoever reads a chunk meets line feeds or pairs only.
+    Line feed, carriage return and the pair end a line.
     """
     held: bytes | None = None
-    line, rest = 1, b""
+    is_first, rest = True, b""
     size = size or CHUNK
     while True:
         block = stream.read(size)
         if not block:
             break
-        data = rest + block if rest else block
-        end = _last_line_end(data)
+        end = _last_line_end(block)
         if end == 0:
-            if len(data) > _LONGEST_LINE:
+            rest += block
+            if len(rest) > _LONGEST_LINE:
                 raise UnreadableError("no line ends: this is not text")
-            rest = data
             continue
-        whole, rest = data[:end], data[end:]
+        whole, rest = b"".join((rest, memoryview(block)[:end])), block[end:]
         if held is not None and len(block) < size // 4:
             # The file ends here: its last chunk must be long enough to hold a whole footer.
             held += whole
             continue
         if held is not None:
-            text, strays = to_utf8(held, codec)
-            yield Chunk(line_feeds(text), line, False, strays)
-            line += count_lines(held)
+            yield Chunk(held, is_first, False)
+            is_first = False
         held = whole
-    text, strays = to_utf8((held or b"") + rest, codec)
-    yield Chunk(line_feeds(text), line, True, strays)
+    yield Chunk((held or b"") + rest, is_first, True)
 
 
 def _last_line_end(data: bytes) -> int:

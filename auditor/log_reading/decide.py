@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from auditor.log_reading.cells import CellReader, shortest
 from auditor.log_reading.dialect import heading_key
+from auditor.log_reading.long_layout import rows_by_tag
 from auditor.log_reading.numbers_text import NumberStyle, settle_numbers
 from auditor.log_reading.table import Columns, distinct, take
 from auditor.records.samples import Disposition
@@ -112,8 +113,7 @@ def decide_rows(
             rows, texts = _settle_rows(values[0], (rows, texts), np.isin(tag_of_row, tags), style)
     index, words = (rows, []) if texts is None else distinct(texts)
     found = _Rejected()
-    for tag, reader in enumerate(readers):
-        own = np.flatnonzero(tag_of_row == tag)
+    for tag, (own, reader) in enumerate(zip(rows_by_tag(tag_of_row, len(readers)), readers, strict=True)):
         part = values[0, own]
         mine = np.flatnonzero(tag_of_row[rows] == tag)
         decided = _decide(part, (np.searchsorted(own, rows[mine]), index[mine], words), reader, sentinels)

@@ -7,6 +7,9 @@ import io
 from dataclasses import dataclass
 from typing import IO
 
+import numpy as np
+import pyarrow as pa
+
 _BOMS = (
     (codecs.BOM_UTF8, "utf-8", "a UTF-8 byte order mark"),
     (codecs.BOM_UTF16_LE, "utf-16-le", "a UTF-16 byte order mark"),
@@ -78,7 +81,7 @@ def to_utf8(data: bytes, codec: str) -> tuple[bytes, int]:
     data, strays
         And how many bytes had no meaning in their place: they are taken as Windows-1252.
     """
-    if data.isascii():
+    if data.isascii() or (codec in _UTF8 and _is_utf8(data)):
         return data, 0
     try:
         text = data.decode(codec)
@@ -86,7 +89,17 @@ def to_utf8(data: bytes, codec: str) -> tuple[bytes, int]:
         escaped = data.decode(codec, "surrogateescape")
         strays = sum(escaped.count(chr(mark)) for mark in _STRAY)
         return escaped.translate(_STRAY).encode("utf-8", "replace"), strays
-    return (data if codec in _UTF8 else text.encode("utf-8", "replace")), 0
+    return text.encode("utf-8", "replace"), 0
+
+
+def _is_utf8(data: bytes) -> bool:
+    """Tell by the validation of Arrow, which needs a tenth of the time of decoding and lets threads run."""
+    ends = pa.py_buffer(np.array([0, len(data)], np.int32))
+    try:
+        pa.Array.from_buffers(pa.utf8(), 1, [None, ends, pa.py_buffer(data)]).validate(full=True)
+    except pa.ArrowInvalid:
+        return False
+    return True
 
 
 class Recoded(io.RawIOBase):

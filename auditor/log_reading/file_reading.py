@@ -3,31 +3,31 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
+from functools import partial
 from typing import IO, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
-from auditor.log_reading.cells import cell_reader
+from auditor.log_reading.ahead import in_order
+from auditor.log_reading.chunk_parsing import ChunkParser, Head, ParsedChunk, line_texts
 from auditor.log_reading.chunks import Chunk, read_chunks
 from auditor.log_reading.clocks import clock_of, second_passes
-from auditor.log_reading.decide import Cells, decide_long, decide_wide
+from auditor.log_reading.decide import Cells
 from auditor.log_reading.dialect import heading_key, split_fields
 from auditor.log_reading.doubts import Doubts
-from auditor.log_reading.encoding import as_ascii_like, codec_of_stream
-from auditor.log_reading.exponents import keep_exponents
-from auditor.log_reading.file_end import cut_end
+from auditor.log_reading.encoding import as_ascii_like
 from auditor.log_reading.listing import READ_ERRORS, hash_file, open_stored, reason_of
-from auditor.log_reading.look import number_columns, row_shape, to_instants, without_lines
+from auditor.log_reading.long_layout import rows_by_tag
+from auditor.log_reading.look import to_instants, without_lines
 from auditor.log_reading.notes import Tally
 from auditor.log_reading.pieces import Fate, Piece, make_piece
-from auditor.log_reading.quality import reject_by_quality
 from auditor.log_reading.recognition import RecognisedFile
-from auditor.log_reading.stamps import Stamps, Texts, read_stamps, style_of
-from auditor.log_reading.table import Columns, Learnt, as_texts, read_columns
+from auditor.log_reading.stamps import Stamps
+from auditor.log_reading.table import Columns, Learnt
 from auditor.records.findings import Finding, FindingCode
-from auditor.records.plant import Export, LongLayout, Tag
+from auditor.records.plant import Export, Tag
 from auditor.records.samples import Disposition, ReadingNote
 
 _NO_TAG = -1
@@ -38,21 +38,14 @@ _SIDE_BY_SIDE_CHUNK = 1 << 17
 class FileReader:
     """Reads one file of an export once."""
 
+    _parser_type: type[ChunkParser] = ChunkParser
+
     def __init__(
         self, file: RecognisedFile, export: Export, tags: Mapping[str, Tag], window_us: tuple[int, int]
     ) -> None:
         self._file, self._export, self._window_us = file, export, window_us
         self._tags = [tags[name] for name in export.tags]
-        self._readers = [cell_reader(export, tag) for tag in self._tags]
-        numbers = number_columns(file.dialect)
-        self._shape = row_shape(file.dialect, export, numbers)
-        columns = file.dialect.columns
-        self._place = [numbers.index(columns[name]) if name in columns else None for name in export.tags]
-        is_counter = [tag.between == "counter" for tag in self._tags]
-        own = {place for place, counts in zip(self._place, is_counter, strict=True) if counts}
-        own |= {0} if file.dialect.is_long and any(is_counter) else set()
-        self._counters = {place for place in own if place is not None}
-        """Number columns that hold counters."""
+        self._parser = self._parser_type.of(file, export, self._tags)
         self._doubts = Doubts(file.path, export, self._tags, file.proof)
         self._clock = clock_of(export.clock)
         self._learnt = Learnt()
@@ -65,17 +58,24 @@ class FileReader:
         self._is_closed = False
         """A different heading row came up: what follows cannot be bound."""
 
-    def read(self) -> Iterator[Piece | ReadingNote]:
-        """Give the rows of the file chunk by chunk, then its note."""
+    def read(self, threads: int) -> Iterator[Piece | ReadingNote]:
+        """Give the rows of the file chunk by chunk, then its note; ``threads`` parse ahead."""
         stored, encoding = self._file.claim.stored, self._file.encoding
         digest = ""
+        # As many files as there are tags: each with small chunks, and none ahead.
         size = _SIDE_BY_SIDE_CHUNK if self._file.point else None
         try:
             with open_stored(stored) as opened:
                 stream = _Hashing(opened) if stored.is_plain else opened
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
-                for chunk in read_chunks(text, codec_of_stream(encoding), size):
-                    yield from self._chunk(chunk)
+                jobs = self._jobs(read_chunks(text, size))
+                for parsed in (job() for job in jobs) if self._file.point else in_order(jobs, threads):
+                    self._learnt = self._learnt.joined(parsed.columns.learnt)
+                    piece = self._chunk(parsed)
+                    # Its lines must not lie in memory until the rows have been worked on.
+                    del parsed
+                    if piece is not None:
+                        yield piece
                 if isinstance(stream, _Hashing):
                     digest = stream.sha256.hexdigest()
         except READ_ERRORS as error:
@@ -95,50 +95,46 @@ class FileReader:
         )
         tally.findings.append(finding)
 
-    def _chunk(self, chunk: Chunk) -> Iterator[Piece]:
-        tally, dialect = self._tally, self._file.dialect
-        tally.strays += chunk.strays
-        data = self._carried + chunk.data
-        self._carried = b""
-        if chunk.first_line < dialect.first_data_line:
-            data = self._pass_over_head(data, dialect.first_data_line - chunk.first_line)
-        if chunk.is_last:
-            end = cut_end(data, dialect, self._export)
-            data = end.body
-        columns, stamps, texts = self._parse(data)
-        if not chunk.is_last and not self._is_closed:
-            at = self._open_hour(stamps, columns)
+    def _jobs(self, chunks: Iterator[Chunk]) -> Iterator[Callable[[], ParsedChunk]]:
+        for chunk in chunks:
+            yield partial(self._parser.parse, chunk, self._learnt)
+
+    def _chunk(self, parsed: ParsedChunk) -> Piece | None:
+        tally = self._tally
+        tally.strays += parsed.strays
+        if self._carried:
+            text = self._carried + parsed.text
+            parsed = self._parser.parse_text(parsed.chunk, text, 0, self._learnt)
+            self._carried = b""
+        if parsed.head is not None:
+            self._pass_over(parsed.head)
+        if parsed.end is None and not self._is_closed:
+            at = self._open_hour(parsed.stamps, parsed.columns)
             if at is not None:
-                self._carried = without_lines(data, at)
-                data = data[: len(data) - len(self._carried)]
-                columns, stamps, texts = self._parse(data)
-        first_line = tally.lines + 1
-        tally.lines += columns.lines
+                self._carried = without_lines(parsed.data, at)
+                parsed = self._parser.without_tail(parsed, self._carried, self._learnt)
+        piece, first_line, lines = None, tally.lines + 1, parsed.columns.lines
+        tally.lines += lines
         if self._is_closed:
-            tally.reject_line(first_line, "", columns.lines)
-        elif columns.lines:
-            yield from self._rows(columns, stamps, texts, first_line)
-        if chunk.is_last:
+            tally.reject_line(first_line, "", lines)
+        elif lines:
+            piece = self._rows(parsed, first_line)
+        end = parsed.end
+        if end is not None:
             tally.footer = end.footer
             tally.skipped += end.footer_lines
             tally.lines += end.footer_lines
             if end.torn is not None:
                 self._hold_back(end.torn)
+        return piece
 
-    def _pass_over_head(self, data: bytes, count: int) -> bytes:
-        """Take off the lines down to the heading; rows above it (the file was sorted) are rejected."""
+    def _pass_over(self, head: Head) -> None:
+        """Count the lines down to the heading; rows above it (the file was sorted) are rejected."""
         tally = self._tally
-        below = without_lines(data, min(count, data.count(b"\n")))
-        head = data[: len(data) - len(below)]
-        columns = read_columns(head, self._shape, Learnt())
-        texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        stamps = read_stamps(texts, style_of(self._export))
-        lost = columns.line[stamps.good & np.isfinite(columns.values).any(axis=0)]
-        if lost.size:
-            tally.reject_line(tally.lines + int(lost[0]) + 1, _line_texts(head, lost[:1])[0], lost.size)
-        tally.skipped += head.count(b"\n") - lost.size
-        tally.lines += head.count(b"\n")
-        return below
+        if head.rows:
+            tally.reject_line(tally.lines + head.first_row + 1, head.first_text, head.rows)
+        tally.skipped += head.lines - head.rows
+        tally.lines += head.lines
 
     def _hold_back(self, text: str) -> None:
         tally = self._tally
@@ -155,19 +151,10 @@ class FileReader:
             )
         )
 
-    def _columns(self, data: bytes) -> Columns:
-        columns = read_columns(data, self._shape, self._learnt)
-        self._learnt = columns.learnt
-        return keep_exponents(columns, self._shape, self._counters)
-
-    def _parse(self, data: bytes) -> tuple[Columns, Stamps, list[Texts]]:
-        columns = self._columns(data)
-        texts = [as_texts(column) for column in columns.texts[: len(self._file.dialect.stamp)]]
-        return columns, read_stamps(texts, style_of(self._export)), texts
-
     def _open_hour(self, stamps: Stamps, columns: Columns) -> int | None:
         """First line of a repeated hour that reaches the end of the chunk: its passes may go on."""
-        if self._export.repeated_hour == "drop" or not stamps.good.any():
+        never_repeats = self._clock.low_us.size == 0
+        if never_repeats or self._export.repeated_hour == "drop" or not stamps.good.any():
             return None
         _, second_us, _ = to_instants(stamps, self._clock)
         inside = stamps.good & (second_us > 0)
@@ -176,12 +163,14 @@ class FileReader:
         hours = np.flatnonzero(inside[tail:])
         return int(columns.line[tail + hours[0]]) if hours.size else None
 
-    def _rows(self, columns: Columns, stamps: Stamps, texts: list[Texts], first_line: int) -> Iterator[Piece]:
+    def _rows(self, parsed: ParsedChunk, first_line: int) -> Piece | None:
         tally, dialect = self._tally, self._file.dialect
-        cells = self._decide(columns)
+        columns, stamps, texts, cells = parsed.columns, parsed.stamps, parsed.texts, parsed.cells
+        for name, count in parsed.unknown.items():
+            tally.unclaimed[name] = tally.unclaimed.get(name, 0) + count
         line = first_line + columns.line
         instants_us, fate = self._instants(stamps, cells, line)
-        closed_at = self._look_at_odd_lines(columns, stamps, fate, first_line)
+        closed_at = self._look_at_odd_lines(parsed, fate, first_line)
         kept = columns.lines if closed_at is None else closed_at
         fate[columns.line >= kept] = Fate.NO_DATA
         dated = (fate == Fate.GOOD) | (fate == Fate.OUTSIDE)
@@ -208,12 +197,11 @@ class FileReader:
         for place in dialect.unclaimed:
             tally.unclaimed[dialect.headings[place]] += data + lost.size
         piece = make_piece(cells, instants_us, line, fate, bad_stamps, len(self._tags))
-        if piece.instants_us.size or piece.rejected.any():
-            yield piece
+        return piece if piece.instants_us.size or piece.rejected.any() else None
 
     def _count_lost_digits(self, cells: Cells, line: NDArray[np.int64], dated: NDArray[np.bool_]) -> None:
         """Note readings of counters whose exponent hides digits."""
-        for tag, reader in enumerate(self._readers):
+        for tag, reader in enumerate(self._parser.readers):
             if reader.counter_step is None:
                 continue
             own = (cells.tag == tag) & (cells.disposition == Disposition.UNPARSEABLE) & dated[cells.row]
@@ -230,16 +218,6 @@ class FileReader:
     ) -> tuple[NDArray[np.int64], NDArray[np.int8]]:
         """First row of each line, and the fate of the line: here every row is a line."""
         return np.arange(fate.size), fate
-
-    def _decide(self, columns: Columns) -> Cells:
-        sentinels = self._export.sentinels
-        if not self._file.dialect.is_long:
-            return decide_wide(columns, self._place, self._readers, sentinels)
-        cells, unknown = decide_long(columns, [tag.column for tag in self._tags], self._readers, sentinels)
-        for name, count in unknown.items():
-            self._tally.unclaimed[name] = self._tally.unclaimed.get(name, 0) + count
-        quality = self._export.layout.quality if isinstance(self._export.layout, LongLayout) else None
-        return cells if quality is None else reject_by_quality(cells, columns.texts[-2], quality)
 
     def _instants(
         self, stamps: Stamps, cells: Cells, line: NDArray[np.int64]
@@ -284,13 +262,12 @@ class FileReader:
         fate[is_good & ((instants_us < start_us) | (instants_us >= end_us))] = Fate.OUTSIDE
         return instants_us, fate
 
-    def _look_at_odd_lines(
-        self, columns: Columns, stamps: Stamps, fate: NDArray[np.int8], first_line: int
-    ) -> int | None:
+    def _look_at_odd_lines(self, parsed: ParsedChunk, fate: NDArray[np.int8], first_line: int) -> int | None:
         """Pass over blank lines and headings that come again; give the line of a different heading."""
         tally, dialect = self._tally, self._file.dialect
-        odd = np.flatnonzero(~stamps.good)
-        texts = _line_texts(columns.data, columns.line[odd])
+        columns = parsed.columns
+        odd = np.flatnonzero(~parsed.stamps.good)
+        texts = line_texts(columns.data, columns.line[odd])
         whole = list(zip(columns.line[odd].tolist(), texts, odd.tolist(), strict=True))
         ragged = [(bad.line, bad.text, None) for bad in columns.ragged]
         idle = " \t\r\x1a" + dialect.delimiter
@@ -326,11 +303,11 @@ class FileReader:
         self, instants_us: NDArray[np.int64], line: NDArray[np.int64], dated: NDArray[np.bool_], cells: Cells
     ) -> None:
         """Show the good stamps to the account, those of a long export tag by tag."""
-        groups = [(_NO_TAG, dated)]
+        groups = [(_NO_TAG, np.flatnonzero(dated))]
         if cells.tag_of_row is not None:
-            groups = [(tag, dated & (cells.tag_of_row == tag)) for tag in range(len(self._tags))]
-        for tag, chosen in groups:
-            rows = np.flatnonzero(chosen)
+            of_tag = rows_by_tag(cells.tag_of_row, len(self._tags))
+            groups = [(tag, rows[dated[rows]]) for tag, rows in enumerate(of_tag)]
+        for tag, rows in groups:
             if rows.size:
                 self._tally.see(instants_us[rows], line[rows], self._before.get(tag))
                 self._before[tag] = (int(line[rows[-1]]), int(instants_us[rows[-1]]))
@@ -355,12 +332,3 @@ def _digest(file: RecognisedFile) -> str:
         return hash_file(file.claim.stored.real)
     except OSError:
         return ""
-
-
-def _line_texts(data: bytes, wanted: NDArray[np.int64]) -> list[str]:
-    if not wanted.size:
-        return []
-    ends = np.flatnonzero(np.frombuffer(data, np.uint8) == 10)
-    starts = np.concatenate([[0], ends[:-1] + 1])
-    spans = zip(starts[wanted].tolist(), ends[wanted].tolist(), strict=True)
-    return [data[start:end].decode("utf-8", "replace") for start, end in spans]

@@ -36,7 +36,13 @@ def pivot(
     values, tag, instants_us, line = values[kept], tag[kept], instants_us[kept], line[kept]
     if kept.size == 0:
         return np.zeros((tags, 0)), instants_us, line
-    run = np.cumsum(np.concatenate([[True], np.diff(instants_us) != 0])) - 1
+    is_new = np.concatenate([[True], np.diff(instants_us) != 0])
+    run = np.cumsum(is_new) - 1
+    if not _comes_again(run * tags + tag):
+        first = np.flatnonzero(is_new)
+        out = np.full((tags, first.size), np.nan)
+        out[tag, run] = values
+        return out, instants_us[first], line[first]
     order = np.lexsort((np.arange(run.size), tag, run))
     is_first = np.concatenate([[True], (np.diff(run[order]) != 0) | (np.diff(tag[order]) != 0)])
     starts = np.flatnonzero(is_first)
@@ -47,3 +53,19 @@ def pivot(
     out = np.full((tags, first.size), np.nan)
     out[tag, row] = values
     return out, instants_us[first], line[first]
+
+
+def _comes_again(key: NDArray[np.int64]) -> bool:
+    """Whether any number stands there twice."""
+    if (key[1:] > key[:-1]).all():
+        return False
+    ranked = np.sort(key)
+    return bool((ranked[1:] == ranked[:-1]).any())
+
+
+def rows_by_tag(tag_of_row: NDArray[np.int64], tags: int) -> list[NDArray[np.int64]]:
+    """Rows of each tag, rising; those of unknown tags (-1) are left out."""
+    # Numbers of two bytes are sorted in one pass.
+    order = np.argsort(tag_of_row.astype(np.int16), kind="stable")
+    counts = np.bincount(tag_of_row + 1, minlength=tags + 1)
+    return np.split(order, np.cumsum(counts)[:-1])[1:]

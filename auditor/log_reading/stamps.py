@@ -253,8 +253,7 @@ def _read_part(texts: Texts, style: StampStyle, part: Part) -> Stamps:
     starts, ends = _without_blanks(texts)
     lengths = ends - starts
     if lengths[0] > 0 and (lengths == lengths[0]).all():
-        _read_length(texts.data, starts, int(lengths[0]), None, (style, part, out))
-        return out
+        return _read_alike(texts.data, starts, int(lengths[0]), (style, part, out))
     for length in np.unique(lengths):
         if 0 < length <= 40:
             rows = np.flatnonzero(lengths == length)
@@ -275,6 +274,25 @@ def _without_blanks(texts: Texts) -> tuple[NDArray[np.int64], NDArray[np.int64]]
             break
         ends = ends - trail
     return starts, ends
+
+
+def _read_alike(
+    data: NDArray[np.uint8], starts: NDArray[np.int64], length: int, into: tuple[StampStyle, Part, Stamps]
+) -> Stamps:
+    """Read stamps of one length; a long export repeats each for many tags, and it is read once."""
+    style, part, out = into
+    is_new = np.ones(starts.size, np.bool_)
+    if (np.diff(starts) == length).all():
+        words = data[starts[0] : starts[0] + starts.size * length].view(f"V{length}").view(f"S{length}")
+        is_new[1:] = words[1:] != words[:-1]
+    if 2 * np.count_nonzero(is_new) > starts.size:
+        _read_length(data, starts, length, None, into)
+        return out
+    first = np.flatnonzero(is_new)
+    once = Stamps(out.local_us[first], out.offset_us[first], out.good[first])
+    _read_length(data, starts[first], length, None, (style, part, once))
+    at = np.cumsum(is_new) - 1
+    return Stamps(once.local_us[at], once.offset_us[at], once.good[at])
 
 
 def _read_length(

@@ -22,6 +22,7 @@ from auditor.log_reading.stamps import Texts
 
 _BLOCK = 1 << 20
 """Block of the parser: it must fit the processor's second-level cache."""
+_PIECE = 1 << 18
 _NOT_A_NUMBER = re.compile(
     r"In CSV column #(\d+): .*?CSV conversion error to double: invalid value '(.*)'$", re.S
 )
@@ -56,6 +57,10 @@ class Learnt:
     """Texts that stand in number columns."""
     wordy: frozenset[int] = frozenset()
     """Number columns with too many different texts: they are read as text throughout."""
+
+    def joined(self, other: Learnt) -> Learnt:
+        """Return what both know."""
+        return Learnt(self.words | other.words, self.wordy | other.wordy)
 
 
 @dataclass(frozen=True)
@@ -102,7 +107,7 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
     Columns
         Rows and ragged lines together are all lines of the chunk.
     """
-    lines = data.count(b"\n")
+    lines = count_feeds(data)
     if lines == 0:
         nothing = np.zeros(0, np.int64)
         none = tuple((nothing, None) for _ in shape.numbers)
@@ -129,6 +134,8 @@ def read_columns(data: bytes, shape: Shape, learnt: Learnt) -> Columns:
         line = np.delete(line, [bad.line for bad in ragged])
     texts = tuple(table.column(f"c{place}").combine_chunks() for place in shape.texts)
     values, missing = _matrix(table, shape)
+    # It holds the numbers once more.
+    del table
     cells = texts_of_rows(body, shape, line, missing)
     return Columns(body, line, texts, values, cells, tuple(ragged), lines, after)
 
@@ -275,7 +282,7 @@ def texts_of_rows(
     for rows in missing:
         touched[rows] = True
     kept = np.flatnonzero(touched)
-    part = data if kept.size == line.size == data.count(b"\n") else _lines(data, line[kept])
+    part = data if kept.size == line.size == count_feeds(data) else _lines(data, line[kept])
     ragged: list[Ragged] = []
     narrow = replace(shape, texts=tuple(wanted), numbers=())
     table = _parse(part, narrow, (set(), set()), ragged, b'"' in part)
@@ -302,11 +309,27 @@ def take(column: pa.Array, rows: NDArray[np.int64]) -> pa.Array:
 
 
 def _lines(data: bytes, wanted: NDArray[np.int64]) -> bytes:
-    ends = np.flatnonzero(np.frombuffer(data, np.uint8) == 10) + 1
-    starts = np.concatenate([np.zeros(1, np.int64), ends[:-1]])
+    """Put the wanted lines, rising, one behind the other; neighbours are copied together."""
+    ends = np.append(0, line_ends(data))
+    heads = np.flatnonzero(np.diff(wanted, prepend=-2) != 1)
+    first, last = wanted[heads], wanted[np.append(heads[1:], wanted.size) - 1]
     view = memoryview(data)
-    spans = zip(starts[wanted].tolist(), ends[wanted].tolist(), strict=True)
+    spans = zip(ends[first].tolist(), ends[last + 1].tolist(), strict=True)
     return b"".join([view[start:end] for start, end in spans])
+
+
+def line_ends(data: bytes) -> NDArray[np.int64]:
+    """Return the place behind each line feed; looked for piece by piece, within the processor's cache."""
+    letters = np.frombuffer(data, np.uint8)
+    places = range(0, len(data), _PIECE)
+    found = [np.flatnonzero(letters[at : at + _PIECE] == 10) + (at + 1) for at in places]
+    return np.concatenate(found) if found else np.zeros(0, np.int64)
+
+
+def count_feeds(data: bytes) -> int:
+    """Count line feeds, many times faster than ``bytes.count`` where lines are short."""
+    letters = np.frombuffer(data, np.uint8)
+    return sum(int(np.count_nonzero(letters[at : at + _PIECE] == 10)) for at in range(0, len(data), _PIECE))
 
 
 def _with_sound_quotes(data: bytes, delimiter: str) -> tuple[bytes, bool]:
