@@ -9,9 +9,6 @@ import os
 
 from hypothesis import HealthCheck, settings
 
-collect_ignore_glob = ["*_pending_*.py"]
-"""Cases of what is not built yet."""
-
 settings.register_profile("suite", derandomize=True, max_examples=50, deadline=None, database=None)
 settings.register_profile(
     "search",

@@ -180,10 +180,18 @@ TEXTS = [
     Case(
         7,
         "decimal comma",
-        {"1.csv": HEAD + "2026-07-01 00:00;1,25;-2,5\n2026-07-01 00:01;1.250,5;3\n"},
+        {"1.csv": HEAD + "2026-07-01 00:00;1,25;-2,5\n2026-07-01 00:01;1.25,5;3\n"},
         export={"decimal": ","},
         samples=[(AT[0], 1.25, -2.5), (AT[1], None, 3.0)],
         cells={"a": {"used": 1, "unparseable": 1}, "b": {"used": 2}},
+    ),
+    Case(
+        7,
+        "groups of three that no declaration explains",
+        {"1.csv": HEAD + "2026-07-01 00:00;1,25;-2,5\n2026-07-01 00:01;1.250,5;3\n"},
+        export={"decimal": ","},
+        refused=True,
+        said=["logs/1.csv:3", '"1.250,5"', "thousands"],
     ),
     Case(
         7,

@@ -146,8 +146,8 @@ CLOCKS = [
         samples=READ,
         lines=(5, 3, 1, 1),
         cells={"a": {"used": 3, "bad stamp": 1}, "b": {"used": 3, "bad stamp": 1}},
-        found=[FindingCode.REJECTED_LINES],
-        said=["1970-01-01"],
+        found=[FindingCode.CLOCK_STEP],
+        said=["1970"],
     ),
 ]
 

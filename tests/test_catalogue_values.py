@@ -83,6 +83,7 @@ COUNTERS = [
         tags={"a": METER | {"hold_s": 1800.0}},
         cells={"a": {"used": 4, "spike": 1}},
         totals={"a": 700.0},
+        found=[FindingCode.SPIKES],
     ),
     Case(
         61,

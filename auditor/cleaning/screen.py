@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from auditor.cleaning.dated import stamp_shift_us
+from auditor.cleaning.dated import rows_by_stretch, stamp_shift_us
 from auditor.cleaning.rates import slow_enough
 from auditor.cleaning.rows import joined
 from auditor.cleaning.spikes import AHEAD, BEHIND, far_from_neighbours
@@ -106,7 +106,7 @@ class _Test:
 
     def judge(self, rows: Rows, stop: int) -> NDArray[np.int8]:
         """Judge the first rows, up to ``stop``, and remember what the later ones need."""
-        numbers = rows.raw[self.row] * self.tag.scale + self.tag.offset
+        numbers, _ = self._numbers(rows)
         at, stamps = self._samples(rows)
         codes = np.zeros(stop, dtype=np.int8)
         values = numbers[at]
@@ -142,13 +142,22 @@ class _Test:
         self._believed = (int(stamps[last]), float(values[last]))
         return believed[lead:]
 
+    def _numbers(self, rows: Rows) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+        """Return every number in SI, and which are finite and believable, by the tag as it is then."""
+        raw = rows.raw[self.row]
+        numbers = np.full(raw.shape, np.nan)
+        good = np.zeros(raw.shape, dtype=np.bool_)
+        for part, then in rows_by_stretch(self.tag, rows.instants_us):
+            numbers[part] = raw[part] * then.scale + then.offset
+            good[part] = np.isfinite(numbers[part])
+            if then.believable is not None:
+                low, high = then.believable
+                good[part] &= (numbers[part] >= low) & (numbers[part] <= high)
+        return numbers, good
+
     def _samples(self, rows: Rows) -> tuple[NDArray[np.intp], NDArray[np.int64]]:
         """Return the rows of the samples to compare, the first one of each stamp, and their stamps."""
-        numbers = rows.raw[self.row] * self.tag.scale + self.tag.offset
-        good = np.isfinite(numbers)
-        if self.tag.believable is not None:
-            low, high = self.tag.believable
-            good &= (numbers >= low) & (numbers <= high)
+        _, good = self._numbers(rows)
         shift = stamp_shift_us(self.tag)
         for start_us, end_us in self.distrust_us:
             first, last = np.searchsorted(rows.instants_us, (start_us + shift, end_us + shift), side="left")

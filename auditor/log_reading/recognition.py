@@ -18,15 +18,13 @@ from auditor.log_reading.dialect import (
 from auditor.log_reading.doubts import Proof, contradicted, grouped, mixed_dates
 from auditor.log_reading.encoding import Encoding
 from auditor.log_reading.file_per_tag import pattern_key
-from auditor.log_reading.listing import READ_ERRORS, Claim, Listing, StoredFile, list_logs, reason_of
+from auditor.log_reading.listing import READ_ERRORS, Claim, StoredFile, list_logs, reason_of
 from auditor.log_reading.look import Look, OtherTag, look_at
 from auditor.log_reading.resets import ANY_TIME, believed_range, range_of
+from auditor.log_reading.unclaimed import unclaimed_files
 from auditor.records.errors import Fault, PlantFileError
 from auditor.records.findings import Finding, FindingCode
 from auditor.records.plant import Export, FilePerTag, LongLayout, Tag
-
-_FOLDER_OF_MANY = 3
-"""So many unclaimed files of one folder are told as one."""
 
 
 @dataclass(frozen=True)
@@ -151,7 +149,7 @@ def recognise(logs: Path, exports: Mapping[str, Export], tags: Mapping[str, Tag]
             )
     if faults:
         raise PlantFileError(faults)
-    findings += _unclaimed(listing)
+    findings += unclaimed_files(listing)
     ordered = tuple(sorted(unopened, key=lambda file: file.stored.path))
     return Recognition(logs, exports, tags, files, ordered, tuple(findings))
 
@@ -384,26 +382,3 @@ def _unreadable(claim: Claim, reason: str) -> Finding:
         file=claim.stored.path,
         words={"reason": reason},
     )
-
-
-def _unclaimed(listing: Listing) -> list[Finding]:
-    """Files that no pattern claims: one finding each, or one for a folder of many."""
-    folders: dict[str, list[StoredFile]] = {}
-    for stored in listing.unclaimed:
-        if not stored.set_aside:
-            folders.setdefault(stored.path.rpartition("/")[0], []).append(stored)
-    findings = []
-    for folder, stored_files in folders.items():
-        if len(stored_files) <= _FOLDER_OF_MANY:
-            findings += [
-                Finding(
-                    FindingCode.UNCLAIMED_FILE, file=stored.path, numbers={"count": 1, "bytes": stored.bytes}
-                )
-                for stored in stored_files
-            ]
-            continue
-        names = [stored.path.rpartition("/")[2] for stored in stored_files]
-        numbers = {"count": len(names), "bytes": sum(stored.bytes for stored in stored_files)}
-        words = {"first": names[0], "last": names[-1]}
-        findings.append(Finding(FindingCode.UNCLAIMED_FILE, file=f"{folder}/", numbers=numbers, words=words))
-    return findings
