@@ -16,6 +16,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from auditor.log_reading.calendar_days import days_since_1970, is_date
 from auditor.log_reading.stamp_words import number_of_month, zone_names
 from auditor.records.plant import DateOrder, Export
 
@@ -25,13 +26,11 @@ NO_OFFSET = np.iinfo(np.int64).min
 
 DAY_US = 86_400_000_000
 _MOST_SHAPES = 256
-_FIRST_YEAR, _LAST_YEAR = 1970, 2100
 _FIRST_US = 631_152_000_000_000
 """1990-01-01 in microseconds since 1970-01-01; ``_LAST_US`` is 2101-01-01."""
 _LAST_US = 4_133_980_800_000_000
 _PIVOT = 70
 """Two-digit years from here on belong to the 1900s."""
-_DAYS = np.array([0, 31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31], dtype=np.int64)
 
 _YEAR, _MONTH, _DAY = "(?P<Y>0000|00)", "(?P<M>00?)", "(?P<D>00?)"
 _NAME = r"(?P<name>[^\W\d_]+\.?)"
@@ -343,8 +342,8 @@ def _compute(
         month = _number(digits, plan, "M") if plan.month is None else np.full(n, plan.month)
         if plan.spans["Y"][1] - plan.spans["Y"][0] == 2:
             year = year + np.where(year < _PIVOT, 2000, 1900)
-        good &= _is_date(year, month, day)
-        local = local + _days(year, month, day) * DAY_US
+        good &= is_date(year, month, day)
+        local = local + days_since_1970(year, month, day) * DAY_US
     if not plan.is_zoned:
         return local, np.full(n, NO_OFFSET), good
     if plan.zone_us is not None:
@@ -394,18 +393,3 @@ def _time_of_day_us(digits: NDArray[np.uint8], plan: _Plan) -> tuple[NDArray[np.
         hour = hour % 12 + (12 if plan.afternoon else 0)
     local = hour * _SPANS_US["h"] + minute * _SPANS_US["m"] + second * _SPANS_US["s"] + fraction
     return local, good
-
-
-def _is_date(year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64]) -> NDArray[np.bool_]:
-    leap = (year % 4 == 0) & ((year % 100 != 0) | (year % 400 == 0))
-    longest = _DAYS[np.clip(month, 0, 12)] + (leap & (month == 2))
-    in_year: NDArray[np.bool_] = (month >= 1) & (month <= 12) & (day >= 1) & (day <= longest)
-    in_year &= (year >= _FIRST_YEAR) & (year <= _LAST_YEAR)
-    return in_year
-
-
-def _days(year: NDArray[np.int64], month: NDArray[np.int64], day: NDArray[np.int64]) -> NDArray[np.int64]:
-    """Days since 1970-01-01 in the Gregorian calendar, counting years from March."""
-    shifted = year - (month <= 2)
-    in_year = (153 * (month + np.where(month > 2, -3, 9)) + 2) // 5 + day - 1
-    return shifted * 365 + shifted // 4 - shifted // 100 + shifted // 400 + in_year - 719_468
