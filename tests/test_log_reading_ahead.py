@@ -7,6 +7,7 @@ import random
 import threading
 import time
 from collections.abc import Callable, Iterator
+from dataclasses import replace
 from datetime import date
 from pathlib import Path
 from typing import IO
@@ -20,7 +21,7 @@ from auditor.log_reading import chunks, read_export, recognise
 from auditor.log_reading.ahead import in_order, one_ahead
 from auditor.log_reading.long_layout import pivot
 from auditor.records.findings import FindingCode
-from auditor.records.plant import Export, LongLayout, Tag
+from auditor.records.plant import Export, LongLayout, PairsLayout, Quality, Tag
 from auditor.records.samples import ReadingNote
 
 WORDS = ("Störung", "off", "", "n/a", "-9999", " bad ", "7,5")
@@ -56,11 +57,54 @@ def long_text() -> str:
     return "\n".join(lines) + "\n"
 
 
+def pairs_text() -> str:
+    """A day of minutes of three tags, each with stamps of its own; the pairs end one after the other."""
+    rng = random.Random(7)
+    lines = ["t1;a;t2;b;t3;c"]
+    for minute in range(1440):
+        cells = []
+        for column in range(3):
+            stamp = f"2025-10-25 {minute // 60:02d}:{minute % 60:02d}:{rng.randint(0, 59):02d}"
+            filled = minute < 1440 - 200 * column
+            number = f"{rng.random():.3f}" if rng.random() > 0.1 else rng.choice(WORDS)
+            cells += [stamp if rng.random() > 0.02 else "no stamp", number] if filled else ["", ""]
+        lines.append(";".join(cells))
+    return "\n".join(lines) + "\n"
+
+
+def coded_text() -> str:
+    """A day of minutes of three tags with quality codes, grouped digits, units, exponents; rows on top."""
+    rng = random.Random(8)
+    lines = ["2025-10-25 00:00:00;A;1;192", "t;n;v;q"]
+    for minute in range(1, 1440):
+        stamp = f"2025-10-25 {minute // 60:02d}:{minute % 60:02d}:00"
+        for name in "ABC":
+            number = f"{10_000 + minute * 7 + rng.random():,.2f}".replace(",", " ")
+            number += " W" if rng.random() < 0.1 else ""
+            counter = rng.choice([f"{100_000 + minute}", "1.0E+05", f"{100_000 + minute:.6E}"])
+            text = rng.choice(WORDS) if rng.random() < 0.05 else counter if name == "C" else number
+            lines.append(f"{stamp};{name};{text.replace(',', '.')};{rng.choice(['192', '192', '0', ''])}")
+    return "\n".join(lines) + "\n"
+
+
+def text_of(shape: str) -> str:
+    """The export of a shape."""
+    texts = {"long": long_text, "pairs": pairs_text, "coded": coded_text}
+    return texts[shape]() if shape in texts else wide_text(zone_change=shape == "autumn")
+
+
 def declared(shape: str) -> tuple[Export, dict[str, Tag]]:
     """The declaration of the exports above."""
     if shape == "long":
         layout = LongLayout("t", "n", "v")
         return make_export({"a": "A", "b": "B", "c": "C"}, layout=layout)
+    if shape == "pairs":
+        return make_export({"a": "a", "b": "b", "c": "c"}, layout=PairsLayout())
+    if shape == "coded":
+        layout = LongLayout("t", "n", "v", Quality("q", ("192",)))
+        names, units = {"a": "A", "b": "B", "c": "C"}, {"a": "W", "b": "W"}
+        export, tags = make_export(names, layout=layout, units=units, thousands="space")
+        return export, tags | {"c": replace(tags["c"], between="counter")}
     return make_export({"a": "a", "b": "b", "c": "c"}, clock="Europe/Stockholm", sentinels=(-9999.0,))
 
 
@@ -85,14 +129,13 @@ def everything(folder: Path, shape: str, threads: int) -> bytes:
     )
 
 
-@pytest.mark.parametrize("shape", ["wide", "autumn", "long"])
+@pytest.mark.parametrize("shape", ["wide", "autumn", "long", "pairs", "coded"])
 def test_any_number_of_threads_reads_the_same(
     tmp_path: Path, shape: str, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     """Blocks, notes, ticks and ledgers are the same bytes with one, two and four threads."""
     monkeypatch.setattr(chunks, "CHUNK", 8192)
-    text = long_text() if shape == "long" else wide_text(zone_change=shape == "autumn")
-    (tmp_path / "export.csv").write_text(text)
+    (tmp_path / "export.csv").write_text(text_of(shape))
     alone = everything(tmp_path, shape, 1)
     assert all(everything(tmp_path, shape, threads) == alone for threads in (2, 4))
 
