@@ -148,7 +148,7 @@ def test_lines_before_a_broken_place_are_kept(tmp_path: Path, monkeypatch: pytes
     recognition = recognise(tmp_path, {"x": export}, tags)
     whole = chunks.read_chunks
 
-    def broken(stream: IO[bytes], size: int | None) -> Iterator[chunks.Chunk]:
+    def broken(stream: IO[bytes], size: int | None, head_lines: int = 0) -> Iterator[chunks.Chunk]:
         for number, chunk in enumerate(whole(stream, size)):
             if number == 9:
                 raise OSError(5, "the disk went away")

@@ -33,10 +33,11 @@ class Chunk:
         return line_feeds(text), strays
 
 
-def read_chunks(stream: IO[bytes], size: int | None = None) -> Iterator[Chunk]:
+def read_chunks(stream: IO[bytes], size: int | None = None, head_lines: int = 0) -> Iterator[Chunk]:
     """Cut a stream at line ends, by default into pieces of ``CHUNK`` bytes.
 
-    Line feed, carriage return and the pair end a line.
+    Line feed, carriage return and the pair end a line. The first piece grows until it holds the lines
+    above the data, ``head_lines`` of them.
     """
     held: bytes | None = None
     is_first, rest = True, b""
@@ -56,11 +57,18 @@ def read_chunks(stream: IO[bytes], size: int | None = None) -> Iterator[Chunk]:
             # The file ends here: its last chunk must be long enough to hold a whole footer.
             held += whole
             continue
+        if held is not None and is_first and _lines_of(held) < head_lines:
+            held += whole
+            continue
         if held is not None:
             yield Chunk(held, is_first, False)
             is_first = False
         held = whole
     yield Chunk((held or b"") + rest, is_first, True)
+
+
+def _lines_of(data: bytes) -> int:
+    return data.count(b"\n") + data.count(b"\r") - data.count(b"\r\n")
 
 
 def _last_line_end(data: bytes) -> int:

@@ -68,7 +68,8 @@ class FileReader:
             with open_stored(stored) as opened:
                 stream = _Hashing(opened) if stored.is_plain else opened
                 text = as_ascii_like(cast("IO[bytes]", stream), encoding)
-                jobs = self._jobs(read_chunks(text, size))
+                head_lines = self._file.dialect.first_data_line - 1
+                jobs = self._jobs(read_chunks(text, size, head_lines))
                 for parsed in (job() for job in jobs) if self._file.point else in_order(jobs, threads):
                     self._learnt = self._learnt.joined(parsed.columns.learnt)
                     piece = self._chunk(parsed)
